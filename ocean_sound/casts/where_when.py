@@ -1,0 +1,135 @@
+"""Positions and times as people write them. What can be read two ways is an error, never a guess."""
+
+from __future__ import annotations
+
+import math
+import re
+from datetime import UTC, datetime
+
+import numpy as np
+
+from ..errors import InputError
+from .cast import NO_TIME, utc
+
+_LIMITS = {"latitude": 90.0, "longitude": 360.0}
+_HEMISPHERES = {"latitude": {"N": 1, "S": -1}, "longitude": {"E": 1, "W": -1}}
+_WORDS = {"NORTH": "N", "SOUTH": "S", "EAST": "E", "WEST": "W"}
+_BLANK = {"", "NAN", "NA", "N/A", "NONE", "NULL", "UNKNOWN", "-", "NAT"}
+_DAY_MONTH = re.compile(r"^(\d{1,2})[/.-](\d{1,2})[/.-](\d{4})(?:[ T,]+(.*))?$")
+_YEAR_FIRST = re.compile(r"^(\d{4})[/.](\d{1,2})[/.](\d{1,2})(?:[ T,]+(.*))?$")
+_NUMBER = re.compile(r"^\d+(?:\.\d*)?$|^\.\d+$")
+
+
+def read_position(text: str, kind: str, *, where: str) -> float:
+    """A latitude or longitude in decimal degrees, from decimal or sexagesimal text; NaN where blank.
+
+    Parameters
+    ----------
+    text : str
+        As ``-34.12``, ``34.12 S``, ``34 07.24 S``, ``34°07'14.4"S``.
+    kind : str
+        ``latitude`` or ``longitude``.
+    where : str
+        File and line, for the message.
+
+    Returns
+    -------
+    float
+        Degrees, positive north and east.
+
+    Raises
+    ------
+    InputError
+        Not a position, or not on the Earth.
+
+    Examples
+    --------
+    >>> read_position("34 07.5 S", "latitude", where="demo")
+    -34.125
+    """
+    upper = text.strip().upper()
+    if upper in _BLANK:
+        return math.nan
+    problem = InputError(
+        f"{where}: {kind} is {text.strip()!r}; write it as decimal degrees, or as degrees, minutes and N, S, E or W"
+    )
+    for word, letter in _WORDS.items():
+        upper = upper.replace(word, letter)
+    letters = re.findall(r"[A-Z]", upper)
+    if "E" in letters and re.fullmatch(r"[-+]?[\d.]+E[-+]?\d+", upper):
+        letters = []  # the E of a power of ten
+        parts = [upper]
+    else:
+        parts = re.sub(r"[A-Z°º'′’\"″”:,_]", " ", upper).split()
+    signs = _HEMISPHERES[kind]
+    if len(letters) > 1 or any(letter not in signs for letter in letters) or not 1 <= len(parts) <= 3:
+        raise problem
+    negative = parts[0].startswith("-")
+    if letters and (negative or parts[0].startswith("+")):
+        raise problem  # a sign and a letter may contradict each other
+    try:
+        numbers = [abs(float(parts[0])), *(float(part) for part in parts[1:] if _NUMBER.match(part))]
+    except ValueError:
+        raise problem from None
+    whole = all(number.is_integer() for number in numbers[:-1])
+    if len(numbers) != len(parts) or not whole or any(number >= 60.0 for number in numbers[1:]):
+        raise problem
+    degrees = sum(number / 60.0**power for power, number in enumerate(numbers))
+    if not degrees <= _LIMITS[kind]:
+        raise InputError(f"{where}: {kind} is {text.strip()!r}; it must lie within {_LIMITS[kind]:g} degrees of zero")
+    return -degrees if negative or (letters and signs[letters[0]] < 0) else degrees
+
+
+def read_time(text: str, *, where: str) -> np.datetime64:
+    """A time in UTC from text; NaT where blank.
+
+    Parameters
+    ----------
+    text : str
+        ISO 8601 (``2026-01-31T12:00Z``; an offset is turned into UTC), ``2026/01/31 12:00``, ``20260131``, or day,
+        month and year in either order where only one order is possible (``31/01/2026``).
+    where : str
+        File and line, for the message.
+
+    Returns
+    -------
+    numpy.datetime64
+        To the nanosecond type, UTC.
+
+    Raises
+    ------
+    InputError
+        Not a time, or one that may be read in two ways.
+
+    Examples
+    --------
+    >>> read_time("13/08/2015 06:38", where="demo")
+    np.datetime64('2015-08-13T06:38:00.000000000')
+    """
+    plain = " ".join(text.split())
+    if plain.upper() in _BLANK:
+        return NO_TIME
+    iso = re.sub(r"\s*(?:UTC|GMT)$", "Z", plain, flags=re.IGNORECASE)
+    if match := _YEAR_FIRST.match(iso):
+        iso = f"{match[1]}-{int(match[2]):02d}-{int(match[3]):02d}" + (f"T{match[4]}" if match[4] else "")
+    elif match := _DAY_MONTH.match(iso):
+        first, second = int(match[1]), int(match[2])
+        if first <= 12 and second <= 12 and first != second:
+            raise InputError(
+                f"{where}: the date {plain!r} may be {match[3]}-{second:02d}-{first:02d} or "
+                f"{match[3]}-{first:02d}-{second:02d}; write it year first"
+            )
+        day, month = (first, second) if second <= 12 else (second, first)
+        iso = f"{match[3]}-{month:02d}-{day:02d}" + (f"T{match[4]}" if match[4] else "")
+    try:
+        moment = datetime.fromisoformat(re.sub(r"\s+(?=Z$|[+-]\d)", "", iso))
+    except ValueError:
+        raise InputError(f"{where}: {plain!r} is not a time; write it as 2026-01-31T12:00:00Z") from None
+    if moment.tzinfo is not None:
+        moment = moment.astimezone(UTC).replace(tzinfo=None)
+    fraction = re.search(r"\.(\d{7,9})", iso)  # datetime holds microseconds only
+    try:
+        time = utc(moment)
+    except ValueError:
+        raise InputError(f"{where}: {plain!r} is not a time of our days") from None
+    return time + np.timedelta64(int(fraction[1][6:].ljust(3, "0")), "ns") if fraction else time
