@@ -1,0 +1,185 @@
+"""Trace rays through one profile."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from .._numba import kernel_array
+from ..errors import InputError
+from . import _kernels
+from .fan import Fan
+from .medium import medium
+
+if TYPE_CHECKING:
+    import xarray
+
+    from ..profile import Profile
+
+# Nothing is heard of a ray that has bounced so often; without an end to it a vertical ray would go on for ever.
+MOST_BOUNCES = 10_000
+MOST_POINTS = 1_000_000
+
+
+def even_angles(lowest: float, highest: float, number: int) -> np.ndarray:
+    """Launch angles spread evenly from the lowest to the highest, degrees; a single one lies midway.
+
+    Raises
+    ------
+    InputError
+        If the angles are out of order or there is not at least one.
+
+    """
+    if number < 1:
+        raise InputError(f"{number} rays: at least one is needed")
+    if not lowest <= highest:
+        raise InputError(f"launch angles from {lowest:g} to {highest:g} degrees: the lowest comes first")
+    return np.linspace(lowest, highest, number) if number > 1 else np.array([0.5 * (lowest + highest)])
+
+
+def trace_fan(
+    profile: Profile,
+    *,
+    source_depth: float,
+    launch_angles: Any,
+    max_range: float,
+    points: int = 0,
+    seabed_depth: float | None = None,
+    max_surface_bounces: int = MOST_BOUNCES,
+    max_seabed_bounces: int = MOST_BOUNCES,
+) -> Fan:
+    """Trace rays as `trace` does, into plain arrays."""
+    water = medium(profile, source_depth, seabed_depth=seabed_depth)
+    angles = np.atleast_1d(np.asarray(launch_angles, dtype=float))
+    _check_angles(angles)
+    if not (np.isfinite(max_range) and max_range > 0.0):
+        raise InputError(f"max_range is {max_range:g} m: it must be a positive number of metres")
+    if points != 0 and not 2 <= points <= MOST_POINTS:
+        raise InputError(f"points is {points}: it must be 0 (no path) or from 2 to {MOST_POINTS}")
+    limits = []
+    for name, limit in (("max_surface_bounces", max_surface_bounces), ("max_seabed_bounces", max_seabed_bounces)):
+        if not 0 <= limit <= MOST_BOUNCES:
+            raise InputError(f"{name} is {limit}: it must lie between 0 and {MOST_BOUNCES}")
+        limits.append(float(limit))
+    values = np.empty((6, angles.size))
+    counts = np.empty((4, angles.size), dtype=np.int64)
+    paths = np.empty((2, angles.size, points))
+    _kernels.trace_fan(
+        kernel_array(angles),
+        water.source_speed,
+        water.source_depth,
+        water.sides,
+        water.tables,
+        float(max_range),
+        (limits[0], limits[1]),
+        values,
+        counts,
+        paths[0],
+        paths[1],
+    )
+    return Fan(
+        profile=profile,
+        source_depth=water.source_depth,
+        seabed_depth=water.seabed_depth,
+        max_range=float(max_range),
+        launch_angle=angles,
+        range=values[0],
+        depth=values[1],
+        travel_time=values[2],
+        path_length=values[3],
+        arrival_angle=values[4],
+        travel_time_uncertainty=None if profile.uncertainty is None else values[5],
+        turns=counts[0],
+        surface_bounces=counts[1],
+        seabed_bounces=counts[2],
+        status=counts[3].astype(np.int8),
+        path_range=paths[0],
+        path_depth=paths[1],
+    )
+
+
+def _check_angles(angles: np.ndarray) -> None:
+    if angles.ndim != 1 or angles.size == 0:
+        raise InputError(f"launch_angles has the shape {angles.shape}: give one angle or a list of them")
+    wrong = np.flatnonzero(~(np.abs(angles) <= 90.0))
+    if wrong.size:
+        raise InputError(
+            f"launch angle {wrong[0]} is {angles[wrong[0]]:g} degrees: "
+            "angles are from the horizontal, positive downward, from -90 to 90"
+        )
+
+
+def trace(
+    water: Profile,
+    *,
+    source_depth: float,
+    launch_angles: Any,
+    max_range: float,
+    points: int = 0,
+    seabed_depth: float | None = None,
+    max_surface_bounces: int = MOST_BOUNCES,
+    max_seabed_bounces: int = MOST_BOUNCES,
+) -> xarray.Dataset:
+    """Trace rays of sound through a profile: exact arcs of circles in layers of constant gradient.
+
+    Parameters
+    ----------
+    water : Profile
+        The water; one that starts below the surface is extended to it at its first speed.
+    source_depth : float
+        Depth of the source, m.
+    launch_angles : float or array_like, shape (rays,)
+        Degrees from the horizontal, positive downward, -90 to 90.
+    max_range : float
+        Horizontal distance at which rays end, m.
+    points : int
+        Sample each path at so many points, evenly spaced in travel time, both ends among them; 0 for no paths.
+    seabed_depth : float, optional
+        Depth of a flat seabed within the profile, m; by default the deepest level is the bottom.
+    max_surface_bounces, max_seabed_bounces : int
+        A ray that would bounce more often ends there instead; 0 ends it at its first touch. At most 10 000.
+
+    Returns
+    -------
+    xarray.Dataset
+        For each `ray`: `launch_angle` and `arrival_angle` (degrees, positive downward, in the direction of travel),
+        `range`, `depth` and `path_length` (m), `travel_time` (s) with `travel_time_uncertainty` (k = 1, where the
+        profile has one), `turns` (turning points), `surface_bounces`, `seabed_bounces`, and `status`; with `points`,
+        `path_range` and `path_depth` on (`ray`, `point`). Status 0: reached the range asked for; 1: tangent at a
+        maximum of speed, where a ray splits and has no one path; 2 and 3: stopped at surface or seabed by the limit of
+        bounces.
+
+    Raises
+    ------
+    InputError
+        If an argument is out of its range; the message names it.
+
+    Notes
+    -----
+    End points of the layered model are good to about 1e-9 m and 1e-12 s, also for grazing and vertical rays (backward
+    error in launch angle under 1e-14 rad). That is arithmetic, not accuracy: between the levels of a cast the sea is
+    not linear. The geometry of rays in constant gradient is in any text; the forms used are derived in `_kernels`.
+
+    Examples
+    --------
+    A ray in a gradient of 0.016 /s turns where the closed form says, at (c0/g)(1/cos - 1):
+
+    >>> import ocean_sound as sound
+    >>> deep = sound.Profile(depth=[0, 2000], speed=[1500, 1532])
+    >>> rays = sound.trace(deep, source_depth=0, launch_angles=5.0, max_range=8202.062205555)
+    >>> round(float(rays.depth[0]), 4), round(float(rays.travel_time[0]), 6)
+    (358.1098, 5.46109)
+
+    """
+    fan = trace_fan(
+        water,
+        source_depth=source_depth,
+        launch_angles=launch_angles,
+        max_range=max_range,
+        points=points,
+        seabed_depth=seabed_depth,
+        max_surface_bounces=max_surface_bounces,
+        max_seabed_bounces=max_seabed_bounces,
+    )
+    return fan.to_dataset()
