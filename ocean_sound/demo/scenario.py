@@ -1,0 +1,173 @@
+"""The demonstration, end to end: what it reads comes with the package, what it writes goes into one folder.
+
+The survey from Ostray Firth to Ostray Deep is invented, places and data alike; the cast of the last part is real.
+"""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from ..casts import read_casts
+from ..errors import OutputError
+from ..figures import fan_figure, profile_figure, save_figure
+from ..files import packaged_profile, write_csv, write_dataset, write_text
+from ..profile import Profile
+from ..rays import even_angles, find_shadow, trace_fan
+from ..water import equations, range_report, speed_of_columns
+from .words import CAUTIONS, NEXT, TITLE
+
+if TYPE_CHECKING:
+    from collections.abc import Callable, Iterator
+    from pathlib import Path
+
+    from ..casts import Cast
+
+# A folder with this file in it is the demonstration's own, and may be written over.
+MARKER = "SUMMARY.txt"
+
+EDGE, DEEP, REAL = "invented/ostray_edge.csv", "invented/ostray_deep.csv", "observed/gsw_check_cast_1.csv"
+INVENTED = "invented data"
+CREDIT = "real cast from the gsw package (SCOR/IAPSO WG127, BSD-3-Clause)"
+# The echo sounder of the invented survey: its depth, and angles from the vertical across its swath.
+SOUNDER_DEPTH, SWATH = 4.0, (0.0, 30.0, 45.0, 60.0, 65.0)
+SOURCE_DEPTH, DEEP_RANGE = 100.0, 80_000.0
+
+
+def run_demo(folder: Path, *, replace: bool = False, progress: Callable[[str], None] = lambda _: None) -> str:
+    """Run the demonstration.
+
+    Parameters
+    ----------
+    folder : pathlib.Path
+        Where the results go; made if it does not exist.
+    replace : bool
+        Whether files of a folder that an earlier demonstration did not make may be replaced.
+    progress : callable
+        Told what is being done, in one line each.
+
+    Returns
+    -------
+    str
+        The summary, which is also written into the folder.
+
+    Raises
+    ------
+    OutputError
+        If the folder can't be made, or holds something else and `replace` is not set.
+
+    """
+    if folder.exists() and not folder.is_dir():
+        raise OutputError(f"{folder}: is a file; name a folder for the demonstration")
+    if folder.is_dir() and any(folder.iterdir()) and not (folder / MARKER).is_file() and not replace:
+        raise OutputError(f"{folder}: holds other things; name a new folder, or --replace to write among them")
+    folder.mkdir(parents=True, exist_ok=True)
+    parts = []
+    for told, part in (
+        (
+            "1 of 3: a shelf-edge cast and the beams of an echo sounder (the first run compiles kernels: some seconds)",
+            _shelf_edge,
+        ),
+        ("2 of 3: a moored source in deep water, its rays and shadow zones", _deep_water),
+        ("3 of 3: a real open cast under every equation", _real_cast),
+    ):
+        progress(told)
+        parts.append("\n".join(part(folder)))
+    summary = "\n\n".join([TITLE, *parts, NEXT, CAUTIONS]) + "\n"
+    write_text(folder / MARKER, summary, replace=True)
+    return summary
+
+
+def _cast(name: str) -> Cast:
+    return next(iter(read_casts(packaged_profile(name))))
+
+
+def _shelf_edge(folder: Path) -> Iterator[str]:
+    """Profile, features, and what refraction does to the outer beams of an echo sounder."""
+    cast = _cast(EDGE)
+    profile = Profile.from_cast(cast)
+    features = profile.features()
+    write_dataset(profile.to_dataset(), folder / "shelf-edge-profile.nc", replace=True)
+    write_csv(folder / "shelf-edge-profile.csv", profile.columns(), preamble=profile.about(), replace=True)
+    picture = profile_figure(profile, features, remark=INVENTED)
+    save_figure(picture, folder / "shelf-edge-profile.png", replace=True)
+    yield "1. Shelf edge, for a survey hydrographer (invented cast)"
+    yield f"   {cast.id}: {len(cast)} levels to {profile.depth[-1]:.0f} m, sound speed by TEOS-10"
+    yield f"   mixed layer to {features.sonic_layer_depth:.0f} m; steepest gradient {features.steepest_gradient:.2f} /s"
+    yield f"   mean speed {features.mean_speed:.2f} m/s, harmonic mean {features.harmonic_mean_speed:.2f} m/s"
+    yield "   Beams to the seabed, traced through the profile, and how far off a straight line is that takes the speed"
+    yield "   at the sounder all the way (same angle, same time):"
+    yield "     from the vertical   depth m   across m   depth off m   across off m"
+    beams = trace_fan(
+        profile,
+        source_depth=SOUNDER_DEPTH,
+        launch_angles=[90.0 - angle for angle in SWATH],
+        max_range=50.0 * profile.depth[-1],
+        max_seabed_bounces=0,
+    )
+    write_dataset(beams.to_dataset(), folder / "shelf-edge-beams.nc", replace=True)
+    slant = profile.at(SOUNDER_DEPTH) * beams.travel_time
+    angles = np.radians(SWATH)
+    columns = (
+        SWATH,
+        beams.depth,
+        beams.range,
+        SOUNDER_DEPTH + slant * np.cos(angles) - beams.depth,
+        slant * np.sin(angles) - beams.range,
+    )
+    for angle, depth, across, wrong_depth, wrong_across in zip(*columns, strict=True):
+        yield f"     {angle:15.0f} °   {depth:7.2f}   {across:8.2f}   {wrong_depth:+11.2f}   {wrong_across:+12.2f}"
+
+
+def _deep_water(folder: Path) -> Iterator[str]:
+    """Rays and shadow zones of a moored source."""
+    profile = Profile.from_cast(_cast(DEEP))
+    features = profile.features()
+    fan = trace_fan(
+        profile,
+        source_depth=SOURCE_DEPTH,
+        launch_angles=even_angles(-15.0, 15.0, 61),
+        max_range=DEEP_RANGE,
+        points=1001,
+        max_seabed_bounces=1,
+    )
+    shadow = find_shadow(profile, source_depth=SOURCE_DEPTH, max_range=DEEP_RANGE)
+    write_dataset(fan.to_dataset(shadow), folder / "deep-water-rays.nc", replace=True)
+    write_csv(folder / "deep-water-rays.csv", fan.columns(), preamble=fan.about(), replace=True)
+    save_figure(profile_figure(profile, features, remark=INVENTED), folder / "deep-water-profile.png", replace=True)
+    save_figure(fan_figure(fan, shadow=shadow, remark=INVENTED), folder / "deep-water-rays.png", replace=True)
+    share = shadow.summary()
+    yield "2. Deep water, for someone placing a source or receiver (invented cast)"
+    yield f"   axis of the deep channel at {features.axis_depth:.0f} m, critical depth {features.critical_depth:.0f} m"
+    yield f"   source at {SOURCE_DEPTH:.0f} m, {len(fan)} rays to {DEEP_RANGE / 1000:.0f} km: " + "; ".join(
+        f"{count} {name.replace('_', ' ')}" for name, count in fan.status_counts().items()
+    )
+    yield f"   {share['no_bounce']:.0%} of the water to that range hears no ray without a bounce,"
+    yield f"   {share['surface_bounces']:.0%} none even with surface bounces (shadow is not silence)"
+
+
+def _real_cast(folder: Path) -> Iterator[str]:
+    """A real cast: its profile, and what each equation makes of it."""
+    cast = _cast(REAL)
+    profile = Profile.from_cast(cast)
+    picture = profile_figure(profile, profile.features(), remark=CREDIT)
+    save_figure(picture, folder / "real-cast-profile.png", replace=True)
+    yield "3. A real open cast, for whoever must defend a speed"
+    yield f"   {CREDIT}"
+    yield f"   {cast.id}, at {cast.latitude:g}, {cast.longitude:g}: {len(cast)} levels to {profile.depth[-1]:.0f} m"
+    yield "   Each equation less TEOS-10, over the levels within the range of the equation:"
+    yield "     equation             levels   mean m/s   largest m/s"
+    measured = {name: cast.values[name] for name in ("temperature", "salinity", "pressure")}
+    reference = speed_of_columns(**measured, latitude=cast.latitude, longitude=cast.longitude, equation="teos10")
+    columns = {"pressure": measured["pressure"], "teos10 [m/s]": reference}
+    for name in equations():
+        inside = ~range_report(name, **measured, latitude=cast.latitude).outside
+        if name == "teos10" or not inside.any():
+            continue  # the equations for fresh water have nothing to say here
+        speed = speed_of_columns(**measured, latitude=cast.latitude, longitude=cast.longitude, equation=name)
+        columns[f"{name} [m/s]"] = np.where(inside, speed, np.nan)
+        off = (speed - reference)[inside]
+        largest = off[np.argmax(np.abs(off))]
+        yield f"     {name:<20} {inside.sum():6d}   {off.mean():+8.3f}   {largest:+11.3f}"
+    write_csv(folder / "real-cast-equations.csv", columns, replace=True)

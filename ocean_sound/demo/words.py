@@ -1,0 +1,22 @@
+"""What the demonstration says besides its numbers."""
+
+TITLE = """\
+OCEAN_SOUND DEMONSTRATION
+The survey from Ostray Firth to Ostray Deep is invented, places and data alike. The cast of part 3 is real."""
+
+NEXT = """\
+What to look at next
+   shelf-edge-profile.png     the profile with its layer, gradient and uncertainty
+   deep-water-rays.png        rays and shadow of a source at 100 m
+   real-cast-profile.png      a real cast; real-cast-equations.csv: its speed by every equation
+   deep-water-rays.nc         the same rays and shadow as CF netCDF (xarray opens it)
+Then your own:
+   ocean-sound cast YOUR-CAST.csv --figure profile.png
+   ocean-sound rays YOUR-CAST.csv --source-depth 30 --max-range 10000 --shadow --figure rays.png
+   ocean-sound speed --temperature 10 --salinity 35 --depth 100 --latitude 45"""
+
+CAUTIONS = """\
+Cautions
+   An aid, not a navigational product: the hydrographer in charge and the responsible authority's own specification
+   decide whether a survey meets its order. Sound sources can injure divers and marine life: follow local regulations
+   and licensed practice."""
