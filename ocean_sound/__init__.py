@@ -12,35 +12,39 @@ from __future__ import annotations
 from importlib import import_module
 from typing import Any
 
-_HOMES = {
-    "errors": ("errors", None),
-    "OceanSoundError": ("errors", "OceanSoundError"),
-    "InputError": ("errors", "InputError"),
-    # water
-    "sound_speed": ("water", "sound_speed"),
-    "equations": ("water", "equations"),
-    "Equation": ("water", "Equation"),
-    # casts
-    "Cast": ("casts", "Cast"),
-    "CastBlock": ("casts", "CastBlock"),
-    "read_casts": ("casts", "read_casts"),
-    # profile
-    "Profile": ("profile", "Profile"),
-    # rays
-    "trace": ("rays", "trace"),
-    "shadow_zones": ("rays", "shadow_zones"),
+_NAMES = {
+    "errors": ("OceanSoundError", "InputError", "CastFileError", "PlanError", "OutputError"),
+    "water": (
+        "sound_speed",
+        "equations",
+        "Equation",
+        "OutOfRangeWarning",
+        "speed_derivatives",
+        "density",
+        "compressibility",
+        "impedance",
+        "absorption",
+        "depth_from_pressure",
+        "pressure_from_depth",
+        "depth_from_density",
+        "salinity_from_conductivity",
+        "wavelength",
+        "wave_number",
+        "period",
+    ),
+    "casts": ("Cast", "CastBlock", "read_casts", "read_blocks"),
+    "profile": ("Profile", "Features"),
+    "rays": ("trace", "shadow_zones"),
 }
+_HOMES = {name: home for home, names in _NAMES.items() for name in names}
 
 __all__ = sorted(_HOMES)
 
 
 def __getattr__(name: str) -> Any:
-    try:
-        home, attribute = _HOMES[name]
-    except KeyError:
-        raise AttributeError(f"module {__name__!r} has no attribute {name!r}") from None
-    module = import_module(f".{home}", __name__)
-    return module if attribute is None else getattr(module, attribute)
+    if name not in _HOMES:
+        raise AttributeError(f"module {__name__!r} has no attribute {name!r}")
+    return getattr(import_module(f".{_HOMES[name]}", __name__), name)
 
 
 def __dir__() -> list[str]:

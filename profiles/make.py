@@ -1,4 +1,3 @@
-# ruff: noqa: INP001  (a script beside its data, in no package)
 """Write the computed files of this folder anew: munk.csv and the casts in invented/.
 
 Run it as `python profiles/make.py`; it needs numpy and gsw. Nothing here was measured. Every number follows from the

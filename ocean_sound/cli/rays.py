@@ -29,6 +29,7 @@ _PHYSICS = (
 class _Asked:
     """What to do, whether a plan says it or the options."""
 
+    title: str
     water: Profile
     source: dict[str, Any]
     angles: Any
@@ -117,7 +118,8 @@ def command(
         shadow = find_shadow(asked.water, **asked.source, grid=asked.grid)
     _write(fan, shadow, output, figure, replace=replace)
     shared.tell(*(f"note: {note}" for note in asked.water.notes))
-    shared.show(_summary(fan, shadow), _lines(fan, shadow), as_json=as_json)
+    heading = [asked.title, ""] if asked.title else []
+    shared.show({"title": asked.title, **_summary(fan, shadow)}, heading + _lines(fan, shadow), as_json=as_json)
 
 
 def _refuse_physics(context: click.Context) -> None:
@@ -134,6 +136,7 @@ def _from_plan(path: Path) -> _Asked:
 
     plan = read_rays_plan(path)
     return _Asked(
+        title=plan.title,
         water=shared.profile_in(
             path.parent / plan.water.file,
             which=plan.water.cast,
@@ -165,6 +168,7 @@ def _from_options(path: Path, physics: dict[str, Any]) -> _Asked:
             option = "--" + name.replace("_", "-")
             raise click.UsageError(f"{option} is missing: rays need the depth of their source and a range to go to")
     return _Asked(
+        title="",
         water=shared.profile_in(
             path,
             which=physics["which"],

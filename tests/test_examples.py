@@ -1,0 +1,37 @@
+"""The examples run, from anywhere, and say what they are about."""
+
+from __future__ import annotations
+
+import subprocess
+import sys
+from pathlib import Path
+
+import pytest
+
+from ocean_sound.cli import run
+
+TOP = Path(__file__).parents[1]
+FOLDER = TOP / "examples"
+
+
+@pytest.mark.parametrize("script", sorted(FOLDER.glob("*.py")), ids=lambda path: path.stem)
+def test_scripts(script, tmp_path):
+    done = subprocess.run([sys.executable, script], capture_output=True, text=True, cwd=tmp_path, check=False)
+    assert done.returncode == 0, done.stderr
+    assert len(done.stdout.splitlines()) >= 3
+    assert done.stderr == ""
+
+
+@pytest.mark.parametrize("plan", sorted(FOLDER.glob("*.toml")), ids=lambda path: path.stem)
+def test_plans(plan, capsys):
+    assert run(["rays", str(plan)]) == 0
+    assert "rays to" in capsys.readouterr().out
+
+
+def test_the_python_face_of_the_readme(tmp_path, monkeypatch):
+    code = (TOP / "README.md").read_text(encoding="utf-8").split("```python\n")[1].split("```")[0]
+    (tmp_path / "cast.csv").write_text("depth [m],temperature [degC],salinity [PSS-78]\n0,15,35\n200,9,35.2\n")
+    monkeypatch.chdir(tmp_path)
+    names: dict = {}
+    exec(code, names)  # noqa: S102
+    assert names["rays"].sizes["ray"] == 3
