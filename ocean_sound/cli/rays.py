@@ -117,9 +117,14 @@ def command(
     if asked.grid is not None:
         shadow = find_shadow(asked.water, **asked.source, grid=asked.grid)
     _write(fan, shadow, output, figure, replace=replace)
-    shared.tell(*(f"note: {note}" for note in asked.water.notes))
+    notes = list(asked.water.notes)
+    if asked.source["seabed_depth"] is None:
+        notes.append(
+            f"no seabed depth is given: the deepest level of the profile, {fan.seabed_depth:g} m, is the bottom"
+        )
+    shared.tell(*(f"note: {note}" for note in notes))
     heading = [asked.title, ""] if asked.title else []
-    shared.show({"title": asked.title, **_summary(fan, shadow)}, heading + _lines(fan, shadow), as_json=as_json)
+    shared.show({"title": asked.title, **_summary(fan, shadow, notes)}, heading + _lines(fan, shadow), as_json=as_json)
 
 
 def _refuse_physics(context: click.Context) -> None:
@@ -197,8 +202,8 @@ def _write(fan: Fan, shadow: Shadow | None, output: Path | None, figure: Path | 
         save_figure(fan_figure(fan, shadow=shadow), figure, replace=replace)
 
 
-def _summary(fan: Fan, shadow: Shadow | None) -> dict[str, Any]:
-    summary = {**fan.about(), "rays": len(fan), "endings": fan.status_counts(), "notes": fan.profile.notes}
+def _summary(fan: Fan, shadow: Shadow | None, notes: list[str]) -> dict[str, Any]:
+    summary = {**fan.about(), "rays": len(fan), "endings": fan.status_counts(), "notes": notes}
     if shadow is not None:
         summary["shadow"] = shadow.summary()
     return {**summary, "per_ray": fan.columns()}

@@ -25,6 +25,8 @@ _KINDS = (
     ("surface bounces", "--", 0.8, "#4d4d4d"),
     ("seabed bounces", ":", 0.7, "#808080"),
 )
+# Strokes from bounce to bounce that a kind of ray may have before its lines are drawn thinner, and how thin at most.
+_CROWDED, _THINNEST = 100, 0.35
 _SHADE, _HATCH, _HATCH_INK = "#e9e9e9", "////", "#b8b8b8"
 _CAUTION = "Shadow is not silence: sound still arrives by the seabed, by diffraction and by scattering."
 _METRES_PER_KM = 1000.0
@@ -110,9 +112,11 @@ def _draw_rays(axes: Axes, fan: Fan) -> list[Artist]:
     for kind, (name, style, width, grey) in reversed(list(enumerate(_KINDS))):
         mine = kinds == kind
         if mine.any():
+            strokes = int((1 + fan.surface_bounces + fan.seabed_bounces)[mine].sum())
+            thin = max(width * min(1.0, (_CROWDED / strokes) ** 0.5), _THINNEST)
             label = f"{name} ({int(mine.sum())} ray{'s' * (int(mine.sum()) != 1)})"
             keys += axes.plot(
-                across[mine].ravel(), down[mine].ravel(), linestyle=style, linewidth=width, color=grey, label=label,
+                across[mine].ravel(), down[mine].ravel(), linestyle=style, linewidth=thin, color=grey, label=label,
                 gid=name,
             )  # fmt: skip
     return keys[::-1]
