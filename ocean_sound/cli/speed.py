@@ -120,6 +120,9 @@ def command(
     """
     shared.check_outputs(output, None, replace=replace)
     asked = _asked(states, mapping, given, properties=properties, frequency=frequency, ph=ph)
+    nowhere = not names and "pressure" not in asked.state and "depth" not in asked.state
+    if nowhere and (asked.state["salinity"] > 0.0).any():
+        raise click.UsageError("--depth or --pressure is missing: 0 stands for the surface")
     from ..water import speeds_side_by_side
 
     readings = speeds_side_by_side(**asked.state, names=names or None)
@@ -127,7 +130,7 @@ def command(
     if output is not None:
         _write(output, asked, readings, further, replace=replace)
     notes = list(dict.fromkeys(line for reading in readings.values() for line in reading.assumptions))
-    if not names and "pressure" not in asked.state and "depth" not in asked.state:
+    if nowhere:
         notes.append("neither depth nor pressure is given: only the equations for atmospheric pressure are shown")
     shared.tell(*(f"note: {note}" for note in notes))
     lines = _one(asked, readings, further) if asked.single else _many(asked, readings, further)

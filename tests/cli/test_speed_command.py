@@ -83,6 +83,12 @@ def test_fresh_water_needs_no_depth(speed):
     assert "neither depth nor pressure is given" in err
 
 
+def test_sea_water_needs_a_depth(speed):
+    status, out, err = speed("--temperature", "18", "--salinity", "35")
+    assert (status, out) == (2, "")
+    assert "--depth or --pressure is missing" in err
+
+
 def test_a_table_of_states(speed, states):
     status, out, err = speed(states)
     assert status == 0
