@@ -13,7 +13,7 @@ from importlib import import_module
 from typing import Any
 
 _NAMES = {
-    "errors": ("OceanSoundError", "InputError", "CastFileError", "PlanError", "OutputError"),
+    "errors": ("OceanSoundError", "InputError", "CastFileError", "PlanError", "OutputError", "WorkerError"),
     "water": (
         "sound_speed",
         "equations",

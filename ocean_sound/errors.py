@@ -28,3 +28,7 @@ class PlanError(OceanSoundError, ValueError):
 
 class OutputError(OceanSoundError, OSError):
     """An output that can't be written: it exists, or its folder does not, or the disk refused."""
+
+
+class WorkerError(OceanSoundError, RuntimeError):
+    """A worker process or a node of a cluster that went away before its work was done."""

@@ -16,7 +16,7 @@ from typing import TYPE_CHECKING
 
 import click
 
-from ..errors import OceanSoundError, OutputError
+from ..errors import OceanSoundError, OutputError, WorkerError
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -88,7 +88,7 @@ def run(arguments: Sequence[str]) -> int:
         return _fail(f"{error.format_message()} (see '{command} --help')", BAD_INPUT, arguments)
     except OceanSoundError as error:
         # An output that can't be written for a cause of its own, a full disk say, is the machine's fault.
-        machine = isinstance(error, OutputError) and error.__cause__ is not None
+        machine = isinstance(error, WorkerError) or (isinstance(error, OutputError) and error.__cause__ is not None)
         return _fail(str(error), FAILED if machine else BAD_INPUT, arguments)
     except SystemExit:
         # click's answer when whoever read our output has gone: nothing is left to say, nor anywhere to say it.
