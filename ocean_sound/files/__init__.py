@@ -5,9 +5,20 @@ from __future__ import annotations
 from .cf import FLAG_MEANINGS, FLAG_VALUES, attributes, header, unit_text
 from .packaged import packaged_profile, packaged_profiles
 from .toml import looks_like_toml
-from .writing import HDF5_LOCK, check_output, checksum, replacing, write_csv, write_dataset, write_text
+from .writing import (
+    CONVENTIONS,
+    HDF5_LOCK,
+    check_output,
+    checksum,
+    replacing,
+    write_csv,
+    write_csv_blocks,
+    write_dataset,
+    write_text,
+)
 
 __all__ = [
+    "CONVENTIONS",
     "FLAG_MEANINGS",
     "FLAG_VALUES",
     "HDF5_LOCK",
@@ -21,6 +32,7 @@ __all__ = [
     "replacing",
     "unit_text",
     "write_csv",
+    "write_csv_blocks",
     "write_dataset",
     "write_text",
 ]

@@ -15,6 +15,10 @@ from ..errors import InputError
 
 FLAG_VALUES = (1, 2, 3, 4, 9)
 FLAG_MEANINGS = "pass not_evaluated suspect fail missing"
+SPEED_ERROR = "sound_speed_error_"
+"""Before the name of a shape of uncertainty."""
+ORIGIN_VALUES = (0, 1, 2, 3, 4, 5)
+ORIGIN_MEANINGS = "measured carried_to_the_surface carried_down neighbour_cast climatology assumed"
 
 _DEGREES = "degree"
 _CELSIUS = "degree_Celsius"
@@ -29,6 +33,29 @@ _QUANTITIES: dict[str, tuple[str | None, str, str | None]] = {
     "cast_id": (None, "identifier of the cast", None),
     "source_file": (None, "file that the cast was read from", None),
     "row_size": ("1", "number of levels of the cast", None),
+    # of each cast in an archive
+    "source_checksum": (None, "SHA-256 of the file that the cast was read from", None),
+    "equation": (None, "sound-speed equation, empty where the speed was measured or there is none", None),
+    "depth_source": (None, "where the depth comes from", None),
+    "depth_from_pressure": ("m", "depth computed from pressure, of casts that give a depth of their own", None),
+    "deepest_depth": ("m", "depth that the cast reaches", None),
+    "surface_speed": (_SPEED, "speed of sound at the surface", None),
+    "harmonic_mean_speed": (_SPEED, "harmonic mean speed of sound from the first to the deepest level", None),
+    "sonic_layer_depth": (
+        "m",
+        "sonic layer depth: the first maximum of the speed of sound from the surface down",
+        None,
+    ),
+    "duplicate_of": ("1", "position of the earlier cast that this one repeats, -1 for none", None),
+    "near_duplicate_of": (
+        "1",
+        "position of an earlier cast at the same place and time whose levels differ, or -1",
+        None,
+    ),
+    "notes": (None, "what was assumed or found when the cast was read and checked", None),
+    "speed_notes": (None, "how the speed of sound came about, or why there is none", None),
+    "cast_attributes": (None, "what else the source says of the cast, as JSON", None),
+    "measured_sound_speed": (_SPEED, "speed of sound as measured", "speed_of_sound_in_sea_water"),
     # measured, and what follows from it
     "depth": ("m", "depth below the water surface", "depth"),
     "pressure": ("dbar", "sea pressure, zero at the surface", "sea_water_pressure_due_to_sea_water"),
@@ -45,6 +72,11 @@ _QUANTITIES: dict[str, tuple[str | None, str, str | None]] = {
     "sound_speed_uncertainty": (
         _SPEED,
         "standard uncertainty (k=1) of the speed of sound",
+        "speed_of_sound_in_sea_water standard_error",
+    ),
+    "sound_speed_noise": (
+        _SPEED,
+        "standard uncertainty (k=1) of the speed of sound, independent on each level",
         "speed_of_sound_in_sea_water standard_error",
     ),
     "sound_speed_gradient": (
@@ -96,7 +128,9 @@ def attributes(name: str) -> dict[str, Any]:
     Parameters
     ----------
     name : str
-        The variable's name, as design and files have it; ``<name>_flag`` for its companion of QARTOD flags.
+        The variable's name, as design and files have it; ``<name>_flag`` for its companion of QARTOD flags,
+        ``<name>_uncertainty`` for standard uncertainties, ``<name>_origin`` for where its values come from;
+        ``sound_speed_error_<cause>`` for the error of the speed from one cause.
 
     Returns
     -------
@@ -120,17 +154,15 @@ def attributes(name: str) -> dict[str, Any]:
     >>> attributes("temperature_flag")["flag_meanings"]
     'pass not_evaluated suspect fail missing'
     """
-    base = name.removesuffix("_flag")
-    if base not in _QUANTITIES:
+    if name not in _QUANTITIES:
+        for ending, companion in _COMPANIONS.items():
+            if name.endswith(ending) and name.removesuffix(ending) in _QUANTITIES:
+                return companion(name.removesuffix(ending))
+        if name.startswith(SPEED_ERROR) and len(name) > len(SPEED_ERROR):
+            cause = name.removeprefix(SPEED_ERROR).replace("_", " ")
+            return {"long_name": f"error of the speed of sound from one standard error of {cause}", "units": _SPEED}
         raise InputError(f"no CF attributes for a variable named {name!r}; known: {', '.join(sorted(_QUANTITIES))}")
-    units, long_name, standard_name = _QUANTITIES[base]
-    if base != name:
-        return {
-            "long_name": f"quality flag of the {base.replace('_', ' ')}",
-            "standard_name": "quality_flag",
-            "flag_values": np.array(FLAG_VALUES, np.int8),
-            "flag_meanings": FLAG_MEANINGS,
-        }
+    units, long_name, standard_name = _QUANTITIES[name]
     found: dict[str, Any] = {"long_name": long_name}
     if standard_name is not None:
         found["standard_name"] = standard_name
@@ -142,7 +174,40 @@ def attributes(name: str) -> dict[str, Any]:
         found["positive"] = "down"
     if name == "cast_id":
         found["cf_role"] = "profile_id"
+    if name == "depth_source":
+        found["flag_values"] = np.array((0, 1, 2), np.int8)
+        found["flag_meanings"] = "as_read from_pressure_by_own_density from_pressure_by_standard_ocean"
     return found
+
+
+def _flag_attributes(base: str) -> dict[str, Any]:
+    return {
+        "long_name": f"quality flag of the {base.replace('_', ' ')}",
+        "standard_name": "quality_flag",
+        "flag_values": np.array(FLAG_VALUES, np.int8),
+        "flag_meanings": FLAG_MEANINGS,
+    }
+
+
+def _origin_attributes(base: str) -> dict[str, Any]:
+    return {
+        "long_name": f"where the {base.replace('_', ' ')} comes from",
+        "flag_values": np.array(ORIGIN_VALUES, np.int8),
+        "flag_meanings": ORIGIN_MEANINGS,
+    }
+
+
+def _uncertainty_attributes(base: str) -> dict[str, Any]:
+    units, long_name, standard_name = _QUANTITIES[base]
+    found = {"long_name": f"standard uncertainty (k=1) of the {long_name}", "units": units or "1"}
+    if standard_name is not None:
+        found["standard_name"] = f"{standard_name} standard_error"
+    if units == _CELSIUS:
+        found["units_metadata"] = "temperature: difference"  # CF 1.11, section 3.1.2
+    return found
+
+
+_COMPANIONS = {"_flag": _flag_attributes, "_origin": _origin_attributes, "_uncertainty": _uncertainty_attributes}
 
 
 def unit_text(name: str) -> str | None:
@@ -153,7 +218,7 @@ def unit_text(name: str) -> str | None:
     """
     if name in _SCALED:
         return _SCALED[name]
-    units = _QUANTITIES.get(name, (None,))[0]
+    units = _SPEED if name.startswith(SPEED_ERROR) else _QUANTITIES.get(name, (None,))[0]
     return None if units in {None, "1"} else _UNIT_TEXTS.get(str(units), units)
 
 

@@ -21,7 +21,7 @@ from ..errors import InputError, OutputError
 from .cf import header
 
 if TYPE_CHECKING:
-    from collections.abc import Iterator, Mapping
+    from collections.abc import Iterable, Iterator, Mapping
     from os import PathLike
 
     import xarray as xr
@@ -168,16 +168,55 @@ def write_csv(
     0.0,1500.25
     10.0,1499.5
     """
+    write_csv_blocks(path, [columns], replace=replace, preamble=preamble)
+
+
+def write_csv_blocks(
+    path: str | PathLike[str],
+    blocks: Iterable[Mapping[str, ArrayLike]],
+    *,
+    replace: bool = False,
+    preamble: Mapping[str, object] | None = None,
+) -> None:
+    """Write columns that come block by block as one table, whole or not at all, without holding it in memory.
+
+    Parameters
+    ----------
+    path, replace, preamble
+        As for `write_csv`.
+    blocks : iterable of mapping of str to array_like, each of shape (n,)
+        The same names in each.
+
+    Raises
+    ------
+    InputError
+        Columns that are not one-dimensional and equally long, or whose names change.
+    OutputError
+        As for `replacing`.
+    """
+    names: list[str] | None = None
+    with replacing(path, replace) as temporary, temporary.open("w", encoding="utf-8", newline="") as file:
+        file.writelines(
+            f"# {key}: {_one_line(value)}\n" for key, value in (preamble or {}).items() if not _is_blank(value)
+        )
+        for block in blocks:
+            arrays = _checked_columns(block)
+            if names is None:
+                names = list(arrays)
+                file.write(",".join(_quoted(header(name)) for name in names) + "\n")
+            if list(arrays) != names:
+                raise InputError(f"the columns change from {', '.join(names)} to {', '.join(arrays)}")
+            cells = [_cells(array, blank="nan" if len(arrays) == 1 else "") for array in arrays.values()]
+            file.writelines(",".join(row) + "\n" for row in zip(*cells, strict=True))
+
+
+def _checked_columns(columns: Mapping[str, ArrayLike]) -> dict[str, np.ndarray[Any, Any]]:
     arrays = {name: np.asarray(values) for name, values in columns.items()}
     shapes = {name: array.shape for name, array in arrays.items()}
     if not arrays or len(set(shapes.values())) != 1 or any(len(shape) != 1 for shape in shapes.values()):
         found = ", ".join(f"{name} {shape}" for name, shape in shapes.items())
         raise InputError(f"columns of a CSV file must be one-dimensional and equally long; found {found or 'none'}")
-    lines = [f"# {key}: {_one_line(value)}" for key, value in (preamble or {}).items() if not _is_blank(value)]
-    lines.append(",".join(_quoted(header(name)) for name in arrays))
-    cells = [_cells(array, blank="nan" if len(arrays) == 1 else "") for array in arrays.values()]
-    lines.extend(map(",".join, zip(*cells, strict=True)))
-    write_text(path, "\n".join([*lines, ""]), replace=replace)
+    return arrays
 
 
 def _is_blank(value: object) -> bool:
