@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator, Mapping, Sequence
+from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
 from types import MappingProxyType
 from typing import TYPE_CHECKING, Any
@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from ..errors import InputError
-from .cast import MISSING, NOT_EVALUATED, VARIABLES, VERTICAL, Cast, read_only
+from .cast import AS_MEASURED, MISSING, NOT_EVALUATED, VARIABLES, VERTICAL, Cast, read_only
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -37,6 +37,8 @@ class CastBlock(Sequence[Cast]):
         Degrees; NaN where unknown.
     flags : mapping of str to array_like of int8, each as long as the columns, optional
         QARTOD flags.
+    uncertainties, origins : mappings of str to array_like, each as long as the columns, optional
+        As in `Cast`; NaN and 0 in the rows of a cast that has none.
     source, attributes, notes : sequences, length casts, optional
         As in `Cast`.
     left_out : sequence of (str, str), optional
@@ -66,6 +68,8 @@ class CastBlock(Sequence[Cast]):
     latitude: NDArray[np.float64]
     longitude: NDArray[np.float64]
     flags: Mapping[str, NDArray[np.int8]] = field(default_factory=dict)
+    uncertainties: Mapping[str, NDArray[np.float64]] = field(default_factory=dict)
+    origins: Mapping[str, NDArray[np.int8]] = field(default_factory=dict)
     source: tuple[str, ...] = ()
     attributes: tuple[Mapping[str, str], ...] = ()
     notes: tuple[tuple[str, ...], ...] = ()
@@ -80,7 +84,9 @@ class CastBlock(Sequence[Cast]):
         starts = read_only(np.concatenate([[0], np.cumsum(row_size)]), np.int64)
         values = {name: read_only(column, np.float64) for name, column in self.values.items()}
         flags = {name: read_only(column, np.int8) for name, column in self.flags.items()}
-        for name, column in (*values.items(), *flags.items()):
+        uncertainties = {name: read_only(column, np.float64) for name, column in self.uncertainties.items()}
+        origins = {name: read_only(column, np.int8) for name, column in self.origins.items()}
+        for name, column in (*values.items(), *flags.items(), *uncertainties.items(), *origins.items()):
             if column.shape != (starts[-1],):
                 raise InputError(f"block: {name} has shape {column.shape}; the row sizes add up to {starts[-1]} levels")
         fields: dict[str, Any] = {
@@ -88,6 +94,8 @@ class CastBlock(Sequence[Cast]):
             "starts": starts,
             "values": MappingProxyType(values),
             "flags": MappingProxyType(flags),
+            "uncertainties": MappingProxyType(uncertainties),
+            "origins": MappingProxyType(origins),
             "id": tuple(self.id),
             "time": read_only(self.time, "datetime64[ns]"),
             "latitude": read_only(self.latitude, np.float64),
@@ -105,7 +113,7 @@ class CastBlock(Sequence[Cast]):
 
     def __reduce__(self) -> tuple[Any, ...]:
         fields = {name: getattr(self, name) for name in self.__dataclass_fields__ if name != "starts"}
-        fields |= {name: dict(fields[name]) for name in ("values", "flags")}
+        fields |= {name: dict(fields[name]) for name in ("values", "flags", "uncertainties", "origins")}
         fields["attributes"] = tuple(map(dict, fields["attributes"]))
         return _rebuilt, (fields,)
 
@@ -140,6 +148,8 @@ class CastBlock(Sequence[Cast]):
             row_size=np.array([len(cast) for cast in casts]),
             values={name: np.concatenate([_column(cast, name) for cast in casts]) for name in names},
             flags={name: np.concatenate([_flag_column(cast, name) for cast in casts]) for name in flagged},
+            uncertainties=_beside([cast.uncertainties for cast in casts], casts, np.nan),
+            origins=_beside([cast.origins for cast in casts], casts, np.int8(AS_MEASURED)),
             id=tuple(cast.id for cast in casts),
             time=np.array([cast.time for cast in casts], "datetime64[ns]"),
             latitude=np.array([cast.latitude for cast in casts]),
@@ -172,6 +182,8 @@ class CastBlock(Sequence[Cast]):
             latitude=self.latitude[index],
             longitude=self.longitude[index],
             flags={name: flag[rows] for name, flag in self.flags.items() if name in present},
+            uncertainties=_of_cast(self.uncertainties, rows, present, np.isfinite),
+            origins=_of_cast(self.origins, rows, present, np.any),
             source=self.source[index],
             attributes=self.attributes[index],
             notes=self.notes[index],
@@ -186,6 +198,25 @@ class CastBlock(Sequence[Cast]):
 
 def _rebuilt(fields: dict[str, Any]) -> CastBlock:
     return CastBlock(**fields)
+
+
+def _beside(of: Sequence[Mapping[str, NDArray[Any]]], casts: Sequence[Cast], otherwise: Any) -> dict[str, NDArray[Any]]:
+    """Companion columns laid end to end, filled up for casts that have none."""
+    names = [name for name in VARIABLES if any(name in own for own in of)]
+    return {
+        name: np.concatenate(
+            [own[name] if name in own else np.full(len(cast), otherwise) for own, cast in zip(of, casts, strict=True)]
+        )
+        for name in names
+    }
+
+
+def _of_cast(
+    columns: Mapping[str, NDArray[Any]], rows: slice, present: Mapping[str, Any], says: Callable[[Any], Any]
+) -> dict[str, NDArray[Any]]:
+    """The companion columns of one cast that say anything about it."""
+    own = {name: column[rows] for name, column in columns.items() if name in present}
+    return {name: column for name, column in own.items() if np.any(says(column))}
 
 
 def _column(cast: Cast, name: str) -> NDArray[np.float64]:

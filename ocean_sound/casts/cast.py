@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from ..errors import InputError
+from ..files.cf import ORIGIN_VALUES
 from ..files.cf import attributes as cf_attributes
 
 if TYPE_CHECKING:
@@ -29,6 +30,10 @@ MEASURED = ("temperature", "salinity", "conductivity", "sound_speed")
 VARIABLES = (*VERTICAL, *MEASURED)
 """Sea pressure (dbar), depth (m, positive down), temperature (degC, ITS-90), practical salinity (PSS-78),
 conductivity (S/m), sound speed (m/s)."""
+
+AS_MEASURED, CARRIED_UP, CARRIED_DOWN, NEIGHBOUR, CLIMATOLOGY, ASSUMED = ORIGIN_VALUES
+"""Where a value comes from: measured here; carried up from the first level to the surface; carried down from the last
+level; a neighbouring cast; a climatology; a constant that was assumed."""
 
 NO_TIME = np.datetime64("NaT", "ns")
 _EARLIEST, _LATEST = np.datetime64("1678-01-01", "s"), np.datetime64("2262-01-01", "s")
@@ -83,6 +88,11 @@ class Cast:
         Degrees north and east; NaN where unknown. Longitudes from -360 to 360 are accepted and kept in [-180, 180).
     flags : mapping of str to array_like of int, each of shape (levels,), optional
         QARTOD flags of any of the values: 1 pass, 2 not evaluated, 3 suspect, 4 fail, 9 missing.
+    uncertainties : mapping of str to array_like, each of shape (levels,), optional
+        Standard uncertainties (k = 1) of any of the values, in their units; NaN where that of the instrument holds.
+    origins : mapping of str to array_like of int, each of shape (levels,), optional
+        Where the values of a variable come from: 0 measured, 1 the first level's, carried up to the surface, 2 the last
+        level's, carried down, 3 a neighbouring cast, 4 a climatology, 5 a constant assumed. All 0 where not given.
     source : str, optional
         The file the cast came from, and the member within it.
     attributes : mapping of str to str, optional
@@ -94,7 +104,8 @@ class Cast:
     ------
     InputError
         No pressure and no depth, an unknown variable, columns of unequal length or not one-dimensional, no level at
-        all, a flag that is not one of QARTOD's, a position that is not on the Earth.
+        all, a flag that is not one of QARTOD's, an uncertainty below 0, an unknown origin, a position that is not on
+        the Earth.
 
     Examples
     --------
@@ -111,6 +122,8 @@ class Cast:
     latitude: float = math.nan
     longitude: float = math.nan
     flags: Mapping[str, NDArray[np.int8]] = field(default_factory=dict)
+    uncertainties: Mapping[str, NDArray[np.float64]] = field(default_factory=dict)
+    origins: Mapping[str, NDArray[np.int8]] = field(default_factory=dict)
     source: str = ""
     attributes: Mapping[str, str] = field(default_factory=dict)
     notes: tuple[str, ...] = ()
@@ -140,6 +153,8 @@ class Cast:
             ("latitude", latitude),
             ("longitude", normalised_longitude(longitude)),
             ("flags", MappingProxyType(_checked_flags(self.flags, values, where))),
+            ("uncertainties", MappingProxyType(_checked_uncertainties(self.uncertainties, values, where))),
+            ("origins", MappingProxyType(_checked_origins(self.origins, values, where))),
             ("attributes", MappingProxyType(dict(self.attributes))),
             ("notes", tuple(self.notes)),
         ):
@@ -211,6 +226,26 @@ class Cast:
         flag = self.flags.get(name)
         return finite if flag is None else finite & ((flag == PASS) | (flag == NOT_EVALUATED))
 
+    @property
+    def added(self) -> NDArray[np.bool_]:
+        """Which levels were added, not measured: nothing but their depth or pressure is of this cast.
+
+        Examples
+        --------
+        >>> cast = Cast(id="A1", values={"depth": [0.0, 5.0], "temperature": [12.5, 12.5]},
+        ...             origins={"temperature": [1, 0]})
+        >>> cast.added.tolist()
+        [True, False]
+        """
+        measured = np.zeros(len(self), dtype=bool)
+        lent = np.zeros(len(self), dtype=bool)
+        for name in MEASURED:
+            if name in self.values:
+                origin = self.origins.get(name, np.zeros(len(self), np.int8))
+                measured |= np.isfinite(self.values[name]) & (origin == AS_MEASURED)
+                lent |= origin != AS_MEASURED
+        return lent & ~measured
+
     def to_dataset(self) -> xr.Dataset:
         """The cast as an `xarray.Dataset` by the CF conventions.
 
@@ -218,18 +253,22 @@ class Cast:
         -------
         xarray.Dataset
             Dimension ``level``; scalar coordinates ``time``, ``latitude``, ``longitude``, ``cast_id``; pressure and
-            depth as coordinates; each other value as a variable, with its flags in ``<name>_flag``, tied by
-            ``ancillary_variables``. Attributes of the cast become global attributes ``cast_<key>``, its notes and
-            source ``notes`` and ``source_file``.
+            depth as coordinates; each other value as a variable. Flags, uncertainties and origins stand in
+            ``<name>_flag``, ``<name>_uncertainty`` and ``<name>_origin``, tied by ``ancillary_variables``. Attributes
+            of the cast become global attributes ``cast_<key>``, its notes and source ``notes`` and ``source_file``.
         """
         import xarray as xr
 
         columns: dict[str, Any] = {}
+        companions = {"flag": self.flags, "uncertainty": self.uncertainties, "origin": self.origins}
         for name, column in self.values.items():
-            extra = {"ancillary_variables": f"{name}_flag"} if name in self.flags else {}
+            beside = " ".join(f"{name}_{kind}" for kind, of in companions.items() if name in of)
+            extra = {"ancillary_variables": beside} if beside else {}
             columns[name] = ("level", column, {**cf_attributes(name), **extra})
-        for name, flag in self.flags.items():
-            columns[f"{name}_flag"] = ("level", flag, cf_attributes(f"{name}_flag"))
+        for kind, of in companions.items():
+            columns |= {
+                f"{name}_{kind}": ("level", column, cf_attributes(f"{name}_{kind}")) for name, column in of.items()
+            }
         scalars = {"time": self.time, "latitude": self.latitude, "longitude": self.longitude, "cast_id": self.id}
         coordinates = {name: ((), value, cf_attributes(name)) for name, value in scalars.items()}
         coordinates |= {name: columns.pop(name) for name in VERTICAL if name in columns}
@@ -259,6 +298,8 @@ def plain_fields(cast: Cast) -> dict[str, Any]:
         "latitude": cast.latitude,
         "longitude": cast.longitude,
         "flags": dict(cast.flags),
+        "uncertainties": dict(cast.uncertainties),
+        "origins": dict(cast.origins),
         "source": cast.source,
         "attributes": dict(cast.attributes),
         "notes": cast.notes,
@@ -284,17 +325,53 @@ def _checked_flags(
 ) -> dict[str, NDArray[np.int8]]:
     checked = {}
     for name, column in flags.items():
-        if name not in values:
-            raise InputError(f"{where}: flags of {name!r}, of which there are no values; it has {', '.join(values)}")
-        flag = np.asarray(column)
-        if flag.shape != values[name].shape:
-            raise InputError(f"{where}: {name} has {values[name].size} levels but flags of shape {flag.shape}")
+        flag = _companion(name, column, "flags", values, where)
         # As unsigned bytes the flags index a table of 256: several times faster than isin for the columns of a cast.
         if flag.dtype != np.int8 or not _KNOWN_FLAG[flag.view(np.uint8)].all():
             bad = flag[~np.isin(flag, FLAGS)]
             if bad.size:
                 raise InputError(f"{where}: flag {bad[0]} of {name}; QARTOD flags are {', '.join(map(str, FLAGS))}")
         checked[name] = read_only(flag, np.int8)
+    return checked
+
+
+def _companion(
+    name: str, column: Any, kind: str, values: Mapping[str, NDArray[np.float64]], where: str
+) -> NDArray[Any]:
+    """A column that stands beside the values of a variable, as long as they are."""
+    if name not in values:
+        raise InputError(f"{where}: {kind} of {name!r}, of which there are no values; it has {', '.join(values)}")
+    beside = np.asarray(column)
+    if beside.shape != values[name].shape:
+        raise InputError(f"{where}: {name} has {values[name].size} levels but {kind} of shape {beside.shape}")
+    return beside
+
+
+def _checked_uncertainties(
+    uncertainties: Mapping[str, Any], values: Mapping[str, NDArray[np.float64]], where: str
+) -> dict[str, NDArray[np.float64]]:
+    checked = {}
+    for name, column in uncertainties.items():
+        beside = read_only(_companion(name, column, "uncertainties", values, where), np.float64)
+        bad = (beside < 0.0) | np.isinf(beside)
+        if bad.any():
+            raise InputError(f"{where}: uncertainty {beside[bad][0]:g} of {name}; it must be 0 or more, NaN if unknown")
+        checked[name] = beside
+    return checked
+
+
+def _checked_origins(
+    origins: Mapping[str, Any], values: Mapping[str, NDArray[np.float64]], where: str
+) -> dict[str, NDArray[np.int8]]:
+    checked = {}
+    for name, column in origins.items():
+        beside = _companion(name, column, "origins", values, where)
+        bad = ~np.isin(beside, ORIGIN_VALUES)
+        if bad.any():
+            raise InputError(
+                f"{where}: origin {beside[bad][0]} of {name}; origins are {', '.join(map(str, ORIGIN_VALUES))}"
+            )
+        checked[name] = read_only(beside, np.int8)
     return checked
 
 

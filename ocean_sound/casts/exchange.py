@@ -1,8 +1,7 @@
 """WHP-Exchange CTD and bottle files: the open comma-separated format of the repeat-hydrography community.
 
-Source: J. H. Swift and S. C. Diggs, 'Description of WHP-Exchange format for CTD/hydrographic data', and the flags of
-the WOCE Operations Manual, WHPO 91-1 (tables of CTD and of water sample quality codes; from memory, the manual was
-not at hand).
+Source: J. H. Swift and S. C. Diggs, 'Description of WHP-Exchange format for CTD/hydrographic data'; the flags are in
+`flag_codes`.
 """
 
 from __future__ import annotations
@@ -14,7 +13,9 @@ import numpy as np
 
 from ..errors import CastFileError, InputError
 from .building import NoUsableLevelError, build_cast
-from .cast import FAIL, MISSING, NO_TIME, NOT_EVALUATED, PASS, SUSPECT, Cast
+from .cast import FAIL, MISSING, NO_TIME, NOT_EVALUATED, SUSPECT, VERTICAL, Cast
+from .flag_codes import WOCE_CTD, WOCE_SAMPLE
+from .levels import ABOVE_SURFACE
 from .plain_csv import decode
 from .table import Table, split_cells, without_fills
 from .units import to_ours
@@ -35,30 +36,9 @@ _COLUMNS = {
     "salinity": (("CTDSAL", True), ("SALNTY", False)),
     "conductivity": (("CTDCOND", True),),
 }
-_CTD_FLAGS = {
-    1: NOT_EVALUATED,  # not calibrated
-    2: PASS,  # acceptable
-    3: SUSPECT,  # questionable
-    4: FAIL,  # bad
-    5: MISSING,  # not reported
-    6: NOT_EVALUATED,  # interpolated over more than 2 dbar
-    7: PASS,  # despiked
-    9: MISSING,  # not sampled
-}
-_SAMPLE_FLAGS = {
-    1: NOT_EVALUATED,  # sample drawn, analysis not received
-    2: PASS,  # acceptable
-    3: SUSPECT,  # questionable
-    4: FAIL,  # bad
-    5: MISSING,  # not reported
-    6: PASS,  # mean of replicates
-    7: NOT_EVALUATED,  # read off a chromatogram by hand
-    8: NOT_EVALUATED,  # read off a chromatogram by hand, irregular
-    9: MISSING,  # not drawn
-}
 _TABLES = {}
-for _ctd, _codes in ((True, _CTD_FLAGS), (False, _SAMPLE_FLAGS)):
-    _TABLES[_ctd] = np.full(10, NOT_EVALUATED, np.int8)  # 0 and 8 of CTD data: no code of the manual
+for _ctd, _codes in ((True, WOCE_CTD), (False, WOCE_SAMPLE)):
+    _TABLES[_ctd] = np.full(10, SUSPECT, np.int8)  # 0, and 8 of CTD data: no code of the manual
     _TABLES[_ctd][list(_codes)] = list(_codes.values())
 _ATTRIBUTES = {
     "EXPOCODE": "cruise",
@@ -119,7 +99,7 @@ def read_exchange(data: bytes, where: str, *, source: str) -> Iterator[Cast]:
 def _read_header(lines: list[str], start: int, where: str) -> tuple[dict[str, str], int]:
     """The 'KEY = value' lines of a CTD file; NUMBER_HEADERS counts them, itself included."""
     first = _HEADER.match(lines[start]) if start < len(lines) else None
-    if first is None or first[1].upper() != "NUMBER_HEADERS" or not first[2].isdigit():
+    if first is None or first[1].upper() != "NUMBER_HEADERS" or not re.fullmatch(r"[0-9]{1,6}", first[2]):
         found = lines[start].strip()[:40] if start < len(lines) else "the end of the file"
         raise CastFileError(f"{where}: line {start + 1} must be 'NUMBER_HEADERS = n', found {found!r}")
     count = int(first[2])
@@ -202,8 +182,15 @@ def _cast(
             values[name], note = to_ours(name, column, unit, where=f"{table.where}: column {head}", settled=True)
             notes += [note] if note else []
             if f"{head}_FLAG_W" in table.heads:
-                flags[name] = _flags(table, f"{head}_FLAG_W", ctd=ctd)[rows]
+                own = _flags(table, f"{head}_FLAG_W", ctd=ctd)[rows]
+                # 'not sampled' beside a value: the source says that it is none
+                flags[name] = np.where((own == MISSING) & np.isfinite(column), FAIL, own).astype(np.int8)
             break
+    for name in VERTICAL:
+        if name in values and (in_air := values[name] < ABOVE_SURFACE).any():
+            before = flags.get(name, np.full(rows.size, NOT_EVALUATED, np.int8))
+            flags[name] = np.where(in_air, FAIL, before).astype(np.int8)
+            notes.append(f"{int(in_air.sum())} levels in air: flagged 4")
     ident = [header[key] for key in ("EXPOCODE", "STNNBR", "CASTNO") if header.get(key)]
     positions = {
         kind: read_position(header.get(kind.upper(), ""), kind, where=f"{where}: {kind.upper()}")
@@ -249,6 +236,6 @@ def _time(header: Mapping[str, str], where: str) -> tuple[np.datetime64, str | N
         return NO_TIME, None
     day = read_time(date, where=f"{where}: DATE")
     digits = clock.replace(":", "").zfill(4)
-    if not clock or not digits.isdigit() or len(digits) != 4 or int(digits[:2]) > 23 or int(digits[2:]) > 59:
+    if not clock or not re.fullmatch("[0-9]{4}", digits) or int(digits[:2]) > 23 or int(digits[2:]) > 59:
         return day, "time of day unknown; midnight stands for it"
     return day + np.timedelta64(int(digits[:2]) * 60 + int(digits[2:]), "m"), None

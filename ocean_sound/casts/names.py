@@ -5,7 +5,8 @@ from __future__ import annotations
 import re
 from dataclasses import dataclass
 
-from .units import is_unit
+from .cast import VARIABLES
+from .units import is_unit, quantity_of
 
 # Compared after `plain_words`: lower case, words parted by single blanks. CF standard names and the parameter codes
 # of the open community formats are among them.
@@ -20,7 +21,12 @@ _WORDS = {
         "|in situ temperature|temperature in situ|t90|temperature its 90"
     ),
     "salinity": "salinity|sal|practical salinity|sea water practical salinity|sea water salinity|psal",
+    "absolute_salinity": "absolute salinity|sea water absolute salinity",
     "conductivity": "conductivity|cond|cndc|electrical conductivity|sea water electrical conductivity",
+    "specific_conductance": (
+        "specific conductance|specific conductivity|spec cond|sp cond|spcond|ec25|conductance at 25 °c"
+        "|conductivity at 25 °c|conductivity at 25 degc|conductivity at 25c|conductivity 25 °c|conductivity 25c"
+    ),
     "sound_speed": (
         "sound speed|soundspeed|speed of sound|sound velocity|sound vel|velocity of sound|sv"
         "|speed of sound in sea water|speed of sound in water"
@@ -29,17 +35,27 @@ _WORDS = {
     "longitude": "longitude|lon|long|start longitude|station longitude",
     "time": "time|date time|datetime|timestamp|start time|start date time|time utc|date time utc|utc|start date",
     "date": "date|date utc",
-    "id": "cast id|cast|profile id|id|cast name",
+    "id": "cast id|cast|profile id|id|cast name|cast number|profile number",
 }
 _MEANING = {word: name for name, words in _WORDS.items() for word in words.split("|")}
 METADATA = ("latitude", "longitude", "time", "date", "id")
 VALUES = tuple(name for name in _WORDS if name not in METADATA)
-MAPPABLE = tuple(_WORDS)
+_VALUE_WORDS = {word for word, name in _MEANING.items() if name in VALUES}
+# Without a word that holds another: whatever names a value holds one of these.
+_SHORTEST = tuple(word for word in _VALUE_WORDS if not any(other in word for other in _VALUE_WORDS - {word}))
+ALL_FLAGS = "flag"
+"""The name of flags that hold for a whole level."""
+FLAGGED = {f"{variable}_flag": (variable,) for variable in VARIABLES} | {ALL_FLAGS: VARIABLES}
+"""By the name of a column of flags, the variables that it is about."""
+MAPPABLE = (*_WORDS, *FLAGGED)
 """What a person may say a column is."""
 
 _BRACKETED = re.compile(r"^(.*?)\s*[\[(]\s*([^\[\]()]*(?:\([^()]*\))?[^\[\]()]*?)\s*[\])]\s*$")
 # What stands in brackets behind a name and says that the column holds something about the value, not the value.
 _ABOUT = {"qc", "flag", "qc flag", "quality", "quality flag", "error", "uncertainty", "std", "sd"}
+_FLAG_WORDS = r"(?:qc flag|quality flag|quality code|quality control|qcflag|flag|qc|qf|quality)"
+_ABOUT_QUALITY = re.compile(rf"^(?:{_FLAG_WORDS}|(.*?) {_FLAG_WORDS}|{_FLAG_WORDS} (?:of )?(.*))$")
+_LONGEST = 200  # characters of a head that means anything
 _SEPARATOR = re.compile(r"[\s_/,:-]+")
 
 
@@ -70,13 +86,23 @@ def meaning(text: str) -> str | None:
     return _MEANING.get(plain_words(text))
 
 
+def may_name_values(line: str) -> bool:
+    """Whether a line may hold the head of a column of values; a quick look that never says no where it should not.
+
+    >>> may_name_values("Depth [m];Temp"), may_name_values("Latitude: 34 S")
+    (True, False)
+    """
+    plain = plain_words(line)
+    return any(word in plain for word in _SHORTEST)
+
+
 def split_unit(text: str) -> tuple[str, str | None]:
     """A head parted into its name and the unit in brackets behind it, if there is one.
 
     >>> split_unit("Depth [m]"), split_unit("Depth")
     (('Depth', 'm'), ('Depth', None))
     """
-    match = _BRACKETED.match(text)
+    match = _BRACKETED.match(text) if len(text) <= _LONGEST else None
     return (match[1], match[2]) if match and match[1] else (text, None)
 
 
@@ -91,6 +117,8 @@ def read_head(cell: str) -> Head:
     True
     """
     text = cell.strip().strip("\"'").strip()
+    if len(text) > _LONGEST:
+        return Head(text, None, None)
     base, unit = split_unit(text)
     if unit is not None:
         name = meaning(base)
@@ -108,3 +136,21 @@ def read_head(cell: str) -> Head:
         if name is not None and is_unit(name, after):
             return Head(text, name, after)
     return Head(text, None, None)
+
+
+def flags_of(text: str) -> str | None:
+    """The name of the flags that a column seems to hold by its head; None if it does not look like flags.
+
+    >>> flags_of("temp QC"), flags_of("QC_Salinity [1]"), flags_of("quality flag"), flags_of("oxygen qc")
+    ('temperature_flag', 'salinity_flag', 'flag', None)
+    """
+    if len(text) > _LONGEST:
+        return None
+    match = _ABOUT_QUALITY.match(plain_words(re.sub(r"[\[\](){}]", " ", re.sub(r"[\[(]\s*1?\s*[\])]", "", text))))
+    if match is None:
+        return None
+    about = match[1] or match[2]
+    if not about:
+        return ALL_FLAGS
+    name = meaning(about)
+    return f"{quantity_of(name)}_flag" if name in VALUES else None

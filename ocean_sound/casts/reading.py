@@ -8,14 +8,15 @@ from typing import TYPE_CHECKING
 from ..errors import CastFileError, InputError
 from .block import CastBlock
 from .exchange import read_exchange
-from .names import MAPPABLE
-from .origin import Origin
+from .origin import HEAD_SIZE, Origin
 from .plain_csv import read_plain
+from .settings import Settings, settings_for
 from .zipped import read_zip
 
 if TYPE_CHECKING:
     from collections.abc import Iterator, Mapping
     from os import PathLike
+    from typing import Any
 
     from .cast import Cast
 
@@ -27,22 +28,33 @@ _ZIP = (b"PK\x03\x04", b"PK\x05\x06")
 _UTF16 = (b"\xff\xfe", b"\xfe\xff")
 _PACKED = {b"\x1f\x8b": "gzip", b"BZh": "bzip2", b"\xfd7zXZ": "xz"}
 _IN_TEXT = b"\t\n\r\x0b\x0c\x1a\x1b" + bytes(range(32, 256))
-_KNOWN = "plain CSV, WHP-Exchange (or a ZIP of either), Argo netCDF, CF netCDF of one cast"
+_KNOWN = "plain CSV, WHP-Exchange, Argo, CF and World Ocean Database netCDF, and a ZIP of any"
 
 
-def read_blocks(path: str | PathLike[str], *, mapping: Mapping[str, str] | None = None) -> Iterator[CastBlock]:
+def read_blocks(
+    path: str | PathLike[str],
+    *,
+    mapping: Mapping[str, str] | None = None,
+    settings: Mapping[str, Any] | None = None,
+) -> Iterator[CastBlock]:
     """Read the casts of a file, block by block.
 
     Parameters
     ----------
     path : path-like
-        Plain CSV, WHP-Exchange CTD or bottle (or a ZIP file of any), Argo profile netCDF, or CF netCDF of one cast or
-        profile as the package writes it. The format is told from the content.
+        Plain CSV, WHP-Exchange CTD or bottle, Argo profile netCDF, CF netCDF in any layout of profiles (the World
+        Ocean Database's among them), or a ZIP file of any. The format is told from the content.
     mapping : mapping of str to str, optional
-        For plain CSV: by our name (``depth``, ``height``, ``pressure``, ``sea_pressure``, ``absolute_pressure``,
-        ``temperature``, ``salinity``, ``conductivity``, ``sound_speed``, ``latitude``, ``longitude``, ``time``,
-        ``date``, ``id``) the column that holds it. A unit in square brackets behind the column's name overrides the
-        file's: ``{"depth": "Z [ft]"}``.
+        For plain CSV and CF netCDF: by our name (``depth``, ``height``, ``pressure``, ``sea_pressure``,
+        ``absolute_pressure``, ``temperature``, ``salinity``, ``absolute_salinity``, ``conductivity``,
+        ``specific_conductance``, ``sound_speed``, ``latitude``, ``longitude``, ``time``, ``date``, ``id``) the column
+        or variable that holds it. A unit in square brackets behind its name overrides the file's:
+        ``{"depth": "Z [ft]"}``. Flags by ``temperature_flag`` and the like (``flag`` for whole levels), with their
+        code in brackets: ``argo``, ``qartod``, ``seadatanet``, ``whp-ctd``, ``whp-bottle`` or ``ignored``.
+    settings : mapping of str to object, optional
+        For plain CSV and CF netCDF: what else the file does not say, by the fields of `ocean_sound.casts.Settings`,
+        such as ``{"in_air_pressure": 0.3}``. The same fields are read from a TOML file beside it, whose name is that
+        of the file with ``.toml`` behind it (``cast.csv.toml``); those given here go before.
 
     Returns
     -------
@@ -55,13 +67,14 @@ def read_blocks(path: str | PathLike[str], *, mapping: Mapping[str, str] | None 
         At once, or while iterating: the file is missing, a folder, empty, of no known format, or broken at the place
         named.
     InputError
-        A name in `mapping` that is not ours, a column that is not in the file, or a mapping for a file that names its
-        variables itself.
+        A name in `mapping` that is not ours, a column that is not in the file, a setting that is unknown or
+        impossible, or either for a file that names its variables itself.
     """
-    mapping = dict(mapping or {})
-    unknown = [name for name in mapping if name not in MAPPABLE]
-    if unknown:
-        raise InputError(f"--map {unknown[0]}=...: nothing is named {unknown[0]!r}; use one of {', '.join(MAPPABLE)}")
+    return read_file(path, settings_for(path, mapping, settings))
+
+
+def read_file(path: str | PathLike[str], settings: Settings) -> Iterator[CastBlock]:
+    """The same with settings that are known; for files that come by the thousand."""
     path = Path(path)
     where = str(path)
     if path.is_dir():
@@ -70,15 +83,20 @@ def read_blocks(path: str | PathLike[str], *, mapping: Mapping[str, str] | None 
         raise CastFileError(f"{where}: no such file; check the name")
     origin = Origin(where, path.name, path.stem, path=path)
     head = _checked_head(origin)
-    return _read(origin, head, mapping)
+    return _read(origin, head, settings)
 
 
-def read_casts(path: str | PathLike[str], *, mapping: Mapping[str, str] | None = None) -> Iterator[Cast]:
+def read_casts(
+    path: str | PathLike[str],
+    *,
+    mapping: Mapping[str, str] | None = None,
+    settings: Mapping[str, Any] | None = None,
+) -> Iterator[Cast]:
     r"""Read the casts of a file, one by one.
 
     Parameters
     ----------
-    path, mapping
+    path, mapping, settings
         As for `read_blocks`.
 
     Returns
@@ -102,7 +120,7 @@ def read_casts(path: str | PathLike[str], *, mapping: Mapping[str, str] | None =
     >>> cast.notes
     ('salinity has no unit; taken as PSS-78',)
     """
-    blocks = read_blocks(path, mapping=mapping)  # here, so that a missing file is told at once
+    blocks = read_blocks(path, mapping=mapping, settings=settings)  # here, so that a missing file is told at once
     return (cast for block in blocks for cast in block)
 
 
@@ -113,14 +131,13 @@ def _checked_head(origin: Origin) -> bytes:
     return head
 
 
-def _read(origin: Origin, head: bytes, mapping: Mapping[str, str]) -> Iterator[CastBlock]:
+def _read(origin: Origin, head: bytes, settings: Settings) -> Iterator[CastBlock]:
     """One origin, by its content; members of a ZIP file come back here."""
     if head.startswith(_ZIP):
-        yield from read_zip(origin, lambda member: _read(member, _checked_head(member), mapping))
+        yield from read_zip(origin, lambda member: _read(member, _checked_head(member), settings))
         return
     if head.startswith((*_CLASSIC, _HDF5)):
-        _refuse_mapping(origin, mapping)
-        yield _read_netcdf(origin)
+        yield _read_netcdf(origin, settings)
         return
     _refuse_binary(origin, head)
     if origin.size() > LARGEST_TEXT:
@@ -128,33 +145,61 @@ def _read(origin: Origin, head: bytes, mapping: Mapping[str, str]) -> Iterator[C
             f"{origin.where}: {origin.size()} bytes of text are more than one cast can be; "
             f"at most {LARGEST_TEXT} are read"
         )
-    if head.lstrip(b"\xef\xbb\xbf \t\r\n").startswith((b"CTD,", b"BOTTLE,")):
-        _refuse_mapping(origin, mapping)
+    if _is_exchange(head):
+        _refuse_settings(origin, settings)
         yield CastBlock.from_casts(read_exchange(origin.read(), origin.where, source=origin.source))
         return
-    cast = read_plain(origin.read(), origin.where, source=origin.source, name=origin.name, mapping=mapping)
-    yield CastBlock.from_casts([cast])
+    yield read_plain(origin.read(), origin.where, source=origin.source, name=origin.name, settings=settings)
 
 
-def _read_netcdf(origin: Origin) -> CastBlock:
-    from .argo import is_argo, read_argo
+def is_plain(data: bytes) -> bool:
+    """Whether bytes are to be read as plain CSV, of ASCII at its head."""
+    head = data[:HEAD_SIZE]
+    return not (
+        not head.strip()
+        or head.startswith(_ZIP + _CLASSIC + (_HDF5,) + _UTF16 + tuple(_PACKED))
+        or head.translate(None, _IN_TEXT)
+        or _is_exchange(head)
+    )
+
+
+def _is_exchange(head: bytes) -> bool:
+    return head.lstrip(b"\xef\xbb\xbf \t\r\n").startswith((b"CTD,", b"BOTTLE,"))
+
+
+def _read_netcdf(origin: Origin, settings: Settings) -> CastBlock:
+    from .argo import is_argo, other_argo, read_argo
     from .cf_profile import read_cf
     from .netcdf import opened
 
-    with opened(origin) as dataset:
-        if is_argo(dataset):
-            return read_argo(dataset, origin)
-        return CastBlock.from_casts([read_cf(dataset, origin)])
+    with opened(origin) as store:
+        if is_argo(store):
+            _refuse_settings(origin, settings)
+            return read_argo(store, origin)
+        kind = other_argo(store)
+        if kind is not None:
+            raise CastFileError(f"{origin.where}: is a file of {kind!r}, which holds no profiles")
+        return read_cf(store, origin, settings)
 
 
-def _refuse_mapping(origin: Origin, mapping: Mapping[str, str]) -> None:
-    if mapping:
-        raise InputError(f"{origin.where}: --map is for plain CSV; this file says itself what its variables are")
+def _refuse_settings(origin: Origin, settings: Settings) -> None:
+    if settings:
+        what = settings.source or ("--map" if settings.columns else "a setting")
+        raise InputError(
+            f"{origin.where}: {what} is for plain CSV and CF netCDF; this file says itself what its variables are"
+        )
+
+
+def _halves(head: bytes) -> Iterator[tuple[bytes, bytes]]:
+    yield head[::2], head[1::2]
+    yield head[1::2], head[::2]
 
 
 def _refuse_binary(origin: Origin, head: bytes) -> None:
     for magic, name in _PACKED.items():
         if head.startswith(magic):
             raise CastFileError(f"{origin.where}: is packed with {name}; unpack it first")
+    if b"\0" in head and any(half.strip(b"\0") and not rest.strip(b"\0") for half, rest in _halves(head)):
+        raise CastFileError(f"{origin.where}: looks like UTF-16 without a byte order mark; save it as UTF-8")
     if head.translate(None, _IN_TEXT) and not head.startswith(_UTF16):
         raise CastFileError(f"{origin.where}: is neither text nor a format that is known; casts are read from {_KNOWN}")

@@ -19,7 +19,7 @@ from ..errors import CastFileError
 from .digits import plain_numbers
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
+    from collections.abc import Collection, Iterator, Sequence
 
     from numpy.typing import NDArray
 
@@ -49,6 +49,10 @@ FILL_VALUES = np.array(
 _DEEP_FILLS = FILL_VALUES[(FILL_VALUES > 0) | (FILL_VALUES <= -9999.0)]
 _FIRST_FILL = 98.0
 _FIRST_POSITIVE_FILL = 99998.0
+_PART_SIZE = 2**22  # characters read at a time
+_LONGEST_ROW = 2**20  # characters
+_LONGEST_NUMBER = 1000
+_LISTED = 20  # heads that a message shows
 _MISSING_WORDS = {"", "nan", "na", "n/a", "n.a.", "null", "none", "nil", "-", "--", "---", "missing", "*", "nat"}
 _PLAIN_NUMBER = re.compile(r"[-+]?(?:\d+\.?\d*|\.\d+)(?:[eEdD][-+]?\d+)?", re.ASCII)
 
@@ -83,6 +87,43 @@ def is_number(cell: str) -> bool:
     return _PLAIN_NUMBER.fullmatch(cell.strip().replace(",", ".").replace("−", "-")) is not None
 
 
+def number_of(text: str, *, comma: bool, missing: Collection[str] = ()) -> float | None:
+    """The number in a cell, NaN for a word that says there is none, None for anything else.
+
+    A typesetter's minus (U+2212) is a minus; D serves for the E of a power of ten.
+
+    >>> number_of("−1,5", comma=True), number_of("n/a", comma=False), number_of("cold", comma=False) is None
+    (-1.5, nan, True)
+    """
+    if len(text) > _LONGEST_NUMBER:
+        return None
+    word = text.strip().lower()
+    if word in _MISSING_WORDS or word in missing:
+        return np.nan
+    plain = word.replace("−", "-")
+    if comma:
+        if "." in plain:
+            return None
+        plain = plain.replace(",", ".", 1)
+    return float(plain.replace("d", "e")) if _PLAIN_NUMBER.fullmatch(plain) else None
+
+
+def listed(texts: Sequence[str]) -> str:
+    """Heads of columns in a message, however many and long they are.
+
+    >>> listed(["a", "b"]), listed(["x"] * 30)[-21:]
+    ('a, b', 'x, x, ... (30 in all)')
+    """
+    shown = ", ".join(shortened(text) for text in texts[:_LISTED])
+    return shown if len(texts) <= _LISTED else f"{shown}, ... ({len(texts)} in all)"
+
+
+def shortened(text: str) -> str:
+    """A text that fits into a message of one line."""
+    text = " ".join(text.split())
+    return text if len(text) <= 40 else text[:37] + "..."
+
+
 @dataclass(frozen=True)
 class Table:
     """Rows of cells below a line of heads.
@@ -95,11 +136,15 @@ class Table:
         Names of the columns as they stand in the file.
     lines : sequence of str
         What stands below the heads, without line ends: each a line, or several with line ends between them. Blank
-        and comment lines are passed over.
+        and comment lines, and rows of empty cells, are passed over.
     first_line : int
         Number of the first of them in the file, counted from one.
     delimiter : str or None
         Between cells; None for white space.
+    decimal : str, optional
+        The point or comma of decimals, where a person has said so; else it is told column by column.
+    missing : collection of str, optional
+        Words in lower case, beside the usual ones, that say that there is no value.
     """
 
     where: str
@@ -107,15 +152,107 @@ class Table:
     lines: Sequence[str]
     first_line: int
     delimiter: str | None
+    decimal: str | None = None
+    missing: Collection[str] = ()
+
+    def _parts(self) -> Iterator[_Rows]:
+        """The rows in parts of some megabytes, so that a large file needs no memory beyond its numbers."""
+        text = "\n".join(self.lines).rstrip(" \n")  # not tabs: they may part empty cells
+        begin, line = 0, self.first_line
+        while len(text) - begin > _PART_SIZE:
+            end = text.find("\n", begin + _PART_SIZE)
+            if end < 0:
+                break
+            part = text[begin:end]
+            self._refuse_long(part, line)
+            yield _Rows(self, part, line)
+            line += part.count("\n") + 1
+            begin = end + 1
+        part = text[begin:] if begin else text
+        self._refuse_long(part, line)
+        yield _Rows(self, part, line)
+
+    def _refuse_long(self, part: str, line: int) -> None:
+        if len(part) > _PART_SIZE + _LONGEST_ROW:
+            ends = part.rfind("\n", 0, _PART_SIZE + 1)
+            raise CastFileError(
+                f"{self.where}: line {line + part.count(chr(10), 0, ends + 1)} has {len(part) - ends - 1} characters; "
+                f"no row is so long (at most {_LONGEST_ROW} are read)"
+            )
 
     @cached_property
-    def _text(self) -> str:
-        return "\n".join(self.lines).rstrip(" \n")  # not tabs: they may part empty cells
+    def _rows(self) -> tuple[_Rows, ...]:
+        return tuple(self._parts())
+
+    @cached_property
+    def _places(self) -> list[tuple[int, int, list[int] | None]]:
+        """By part: number of rows, first line, and the line of each row (None: one after the other)."""
+        return [rows.places() for rows in self._rows]
+
+    def columns(
+        self, numbers: Collection[int], texts: Collection[int]
+    ) -> tuple[dict[int, NDArray[np.float64]], dict[int, list[str]]]:
+        """Some columns as numbers and some as text, in one walk that keeps nothing else.
+
+        Raises
+        ------
+        CastFileError
+            As for `numbers`.
+        """
+        found: dict[int, list[NDArray[np.float64]]] = {column: [] for column in numbers}
+        words: dict[int, list[str]] = {column: [] for column in texts}
+        once: dict[str, str] = {}
+        places = []
+        for rows in self._parts():
+            for column, parts in found.items():
+                parts.append(rows.numbers(column))
+            for column, cells in words.items():
+                cells += [once.setdefault(text, text) for text in rows.texts(column)]
+            places.append(rows.places())
+        self.__dict__["_places"] = places
+        return {column: np.concatenate(parts) for column, parts in found.items()}, words
+
+    def __len__(self) -> int:
+        return sum(count for count, _, _ in self._places)
+
+    def line_of(self, row: int) -> int:
+        """The line of the file on which a row stands."""
+        for count, first, lines in self._places:
+            if row < count:
+                return first + row if lines is None else lines[row]
+            row -= count
+        raise IndexError(row)
+
+    def texts(self, column: int) -> list[str]:
+        """A column as text."""
+        return [text for rows in self._rows for text in rows.texts(column)]
+
+    def numbers(self, column: int) -> NDArray[np.float64]:
+        """A column as numbers, NaN where a cell is empty or says so; fill values are left as they are.
+
+        A typesetter's minus (U+2212) is a minus.
+
+        Raises
+        ------
+        CastFileError
+            A cell holds anything else.
+        """
+        return np.concatenate([rows.numbers(column) for rows in self._rows])
+
+
+@dataclass(frozen=True)
+class _Rows:
+    """A part of a table: some of its lines."""
+
+    table: Table
+    text: str
+    first_line: int
 
     @cached_property
     def _numbers(self) -> NDArray[np.float64] | None:
-        """The whole table as numbers, where it is plain enough to be read at one go."""
-        return None if self.delimiter is None else plain_numbers(self._text, self.delimiter, len(self.heads))
+        """All cells as numbers, where they are plain enough to be read at one go."""
+        table = self.table
+        return None if table.delimiter is None else plain_numbers(self.text, table.delimiter, len(table.heads))
 
     @cached_property
     def _cells(self) -> tuple[list[str], int, list[int] | None]:
@@ -123,14 +260,14 @@ class Table:
 
         The lines are None where row i stands on line first_line + i.
         """
-        text, width = self._text, len(self.heads)
-        if text and '"' not in text and "#" not in text and "%" not in text:
+        text, width, delimiter = self.text, len(self.table.heads), self.table.delimiter
+        if text and not any(mark in text for mark in ('"', "#", "%")) and not _may_be_empty(text, delimiter):
             # Each line end becomes a cell of its own: the rows are all of one width if every such cell is in its place.
-            if self.delimiter is None:
+            if delimiter is None:
                 cells = text.replace("\n", " | ").split()
                 ends = "|"
             else:
-                cells = text.replace("\n", f"{self.delimiter}\n{self.delimiter}").split(self.delimiter)
+                cells = text.replace("\n", f"{delimiter}\n{delimiter}").split(delimiter)
                 ends = "\n"
             rows = text.count("\n") + 1
             if len(cells) == rows * (width + 1) - 1 and cells[width :: width + 1].count(ends) == rows - 1:
@@ -139,77 +276,70 @@ class Table:
         return cells, width, lines
 
     def _checked_cells(self, lines: list[str]) -> tuple[list[str], list[int]]:
-        width = len(self.heads)
+        table, width = self.table, len(self.table.heads)
         cells: list[str] = []
         numbers: list[int] = []
         for number, line in enumerate(lines, self.first_line):
             stripped = line.strip()
             if not stripped or stripped[0] in "#%":
                 continue
-            row = split_cells(line, self.delimiter)
+            row = split_cells(line, table.delimiter)
             while len(row) > width and not row[-1]:
                 row.pop()  # a delimiter at the end of the line
             if not any(row):
                 continue
             if len(row) != width:
                 raise CastFileError(
-                    f"{self.where}: line {number} has {len(row)} cells where the heads name {width} columns; "
+                    f"{table.where}: line {number} has {len(row)} cells where the heads name {width} columns; "
                     "give every line one cell per column (empty where a value is missing)"
                 )
             cells += row
             numbers.append(number)
         return cells, numbers
 
-    def __len__(self) -> int:
+    def places(self) -> tuple[int, int, list[int] | None]:
         if self._numbers is not None:
-            return len(self._numbers)
-        cells, step, _ = self._cells
-        return (len(cells) + step - len(self.heads)) // step
-
-    def line_of(self, row: int) -> int:
-        """The line of the file on which a row stands."""
-        numbers = self._cells[2]
-        return self.first_line + row if numbers is None else numbers[row]
+            return len(self._numbers), self.first_line, None
+        cells, step, lines = self._cells
+        return (len(cells) + step - len(self.table.heads)) // step, self.first_line, lines
 
     def texts(self, column: int) -> list[str]:
-        """A column as text."""
         cells, step, _ = self._cells
         return cells[column::step]
 
     def numbers(self, column: int) -> NDArray[np.float64]:
-        """A column as numbers, NaN where a cell is empty or says so; fill values are left as they are.
-
-        Raises
-        ------
-        CastFileError
-            A cell holds anything else.
-        """
         if self._numbers is not None:
             return np.ascontiguousarray(self._numbers[:, column])
-        texts = self.texts(column)
-        if "_" not in self._text:  # which float takes for a number: 1_000
+        texts, table = self.texts(column), self.table
+        if "_" not in self.text and table.decimal != ",":  # an underscore float takes for part of a number: 1_000
             try:
                 return np.fromiter(map(float, texts), np.float64, len(texts))
             except ValueError:
                 pass  # gaps, decimal commas, or text: cell by cell
         texts = [text.strip() for text in texts]
-        comma = self.delimiter != "," and any("," in text for text in texts)
+        comma = table.decimal == "," or (
+            table.decimal is None and table.delimiter != "," and any("," in text for text in texts)
+        )
         return np.array([self._number(text, row, column, comma=comma) for row, text in enumerate(texts)], np.float64)
 
     def _number(self, text: str, row: int, column: int, *, comma: bool) -> float:
-        if text.lower() in _MISSING_WORDS:
-            return np.nan
-        plain = text.replace("−", "-")  # the minus sign of typesetters
-        if comma:
-            if "." in plain:
-                raise self._error(row, column, text, "the column has decimal commas and points; use one of them")
-            plain = plain.replace(",", ".", 1)
-        if not _PLAIN_NUMBER.fullmatch(plain):
-            trouble = "it is not a number; correct it, or leave the cell empty if there is no value"
-            raise self._error(row, column, text, trouble)
-        return float(plain.replace("D", "e").replace("d", "e"))
+        value = number_of(text, comma=comma, missing=self.table.missing)
+        if value is not None:
+            return value
+        trouble = "it is not a number; correct it, or leave the cell empty if there is no value"
+        if comma and "." in text and is_number(text):
+            trouble = "the column has decimal commas and points; use one of them"
+        elif text == self.table.heads[column].strip():
+            trouble = "the heads stand here again; part files that were joined, or name the casts in an id column"
+        raise self._error(row, column, text, trouble)
 
     def _error(self, row: int, column: int, text: str, trouble: str) -> CastFileError:
-        shown = text if len(text) <= 40 else text[:37] + "..."
-        place = f"{self.where}: line {self.line_of(row)}, column {self.heads[column]!r}"
-        return CastFileError(f"{place}: {shown!r}: {trouble}")
+        _, first, lines = self.places()
+        line = first + row if lines is None else lines[row]
+        place = f"{self.table.where}: line {line}, column {shortened(self.table.heads[column])!r}"
+        return CastFileError(f"{place}: {shortened(text)!r}: {trouble}")
+
+
+def _may_be_empty(text: str, delimiter: str | None) -> bool:
+    """Whether a row may consist of empty cells: then the lines are looked at one by one."""
+    return delimiter is not None and (text.startswith(delimiter) or f"\n{delimiter}" in text)

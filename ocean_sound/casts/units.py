@@ -48,14 +48,15 @@ _SPELLINGS: dict[str, list[tuple[str, str, Convert]]] = {
         ("PSS-78", "pss-78 pss78 pss psu 1 practical practicalsalinityunit practicalsalinityunits", None),
         ("ppt", "ppt 1e-3 permil permille o/oo 0/00 ‰", None),
     ],
+    "absolute_salinity": [("g/kg", "g/kg gkg-1", None), ("kg/kg", "kg/kg kgkg-1", lambda s: s * 1000.0)],
     "pressure": [
         ("dbar", "dbar dbars decibar decibars db", None),
         ("bar", "bar bars", lambda p: p * 10.0),
-        ("MPa", "mpa megapascal", lambda p: p * 100.0),
-        ("kPa", "kpa kilopascal", lambda p: p / 10.0),
-        ("hPa", "hpa mbar millibar hectopascal", lambda p: p / 100.0),
-        ("Pa", "pa pascal", lambda p: p / 1e4),
-        ("psi", "psi", lambda p: p * _DBAR_PER_PSI),
+        ("MPa", "mpa megapascal megapascals", lambda p: p * 100.0),
+        ("kPa", "kpa kilopascal kilopascals", lambda p: p / 10.0),
+        ("hPa", "hpa mbar millibar millibars hectopascal hectopascals", lambda p: p / 100.0),
+        ("Pa", "pa pascal pascals", lambda p: p / 1e4),
+        ("psi", "psi lbf/in2", lambda p: p * _DBAR_PER_PSI),
         ("kg/cm2", "kg/cm2 kgf/cm2", lambda p: p * _DBAR_PER_KGF_CM2),
         ("atm", "atm", lambda p: p * _DBAR_PER_ATM),
     ],
@@ -70,6 +71,7 @@ _SPELLINGS: dict[str, list[tuple[str, str, Convert]]] = {
         ("mS/cm", "ms/cm mscm-1 mmho/cm", lambda c: c / 10.0),
         ("uS/cm", "us/cm uscm-1 umho/cm", lambda c: c / 1e4),
         ("mS/m", "ms/m msm-1", lambda c: c / 1e3),
+        ("uS/m", "us/m usm-1", lambda c: c / 1e6),
     ],
     "sound_speed": [
         ("m/s", "m/s ms-1 m/sec mps metres/second meters/second metre/second", None),
@@ -84,7 +86,13 @@ _WAYS: dict[str, dict[str, tuple[str, Convert]]] = {
 _GRAMS = {"g/kg", "gkg-1"}
 
 # Columns that end up as one of our variables but are not named like it.
-_QUANTITY = {"height": "depth", "absolute_pressure": "pressure", "sea_pressure": "pressure"}
+_QUANTITY = {
+    "height": "depth",
+    "absolute_pressure": "pressure",
+    "sea_pressure": "pressure",
+    "absolute_salinity": "salinity",
+    "specific_conductance": "conductivity",
+}
 
 
 def quantity_of(name: str) -> str:
@@ -100,12 +108,20 @@ def _plain(unit: str) -> str:
 def is_unit(name: str, unit: str) -> bool:
     """Whether the text is a unit in which that variable may be given, ambiguous ones included."""
     plain = _plain(unit)
-    return plain in _WAYS.get(quantity_of(name), {}) or (name == "salinity" and plain in _GRAMS)
+    return plain in _ways(name) or (name == "salinity" and plain in _GRAMS)
+
+
+def _ways(name: str) -> dict[str, tuple[str, Convert]]:
+    return _WAYS[name] if name in _WAYS else _WAYS.get(quantity_of(name), {})
 
 
 def accepted(name: str) -> str:
     """The units in which a variable may be given, as a list in words."""
-    return ", ".join(unit for unit, _, _ in _SPELLINGS[quantity_of(name)])
+    return ", ".join(unit for unit, _, _ in _spellings(name))
+
+
+def _spellings(name: str) -> list[tuple[str, str, Convert]]:
+    return _SPELLINGS[name] if name in _SPELLINGS else _SPELLINGS[quantity_of(name)]
 
 
 def to_ours(
@@ -116,7 +132,8 @@ def to_ours(
     Parameters
     ----------
     name : str
-        The column's recognised name: a variable of ours, or ``height``, ``sea_pressure`` or ``absolute_pressure``.
+        The column's recognised name: a variable of ours, or ``height``, ``sea_pressure``, ``absolute_pressure``,
+        ``absolute_salinity`` or ``specific_conductance``.
     values : ndarray
         Not changed; handed back itself where it is in our unit already.
     unit : str or None
@@ -143,19 +160,19 @@ def to_ours(
     (array([10.]), 'temperature converted from degF')
     """
     quantity = quantity_of(name)
-    choices = _WAYS[quantity]
+    choices = _ways(name)
     plain = _plain(unit) if unit else None
-    if plain in _GRAMS and quantity == "salinity":
+    if plain in _GRAMS and name == "salinity":
         raise InputError(
-            f"{where}: salinity in g/kg may be absolute salinity or practical salinity; if it is practical say so with "
-            f'--map "salinity=COLUMN [PSS-78]", if absolute convert it to practical salinity first'
+            f"{where}: salinity in g/kg may be absolute salinity or practical salinity; say which with "
+            f'--map "absolute_salinity=COLUMN [g/kg]" or --map "salinity=COLUMN [PSS-78]"'
         )
     if plain is not None and plain not in choices:
-        what = quantity.replace("_", " ")
+        what = (name if name in _WAYS else quantity).replace("_", " ")
         raise InputError(f"{where}: unit {unit!r} is not known for {what}; use one of {accepted(name)}")
     note: str | None
     if plain is None:
-        ours = _SPELLINGS[quantity][0][0]
+        ours = _spellings(name)[0][0]
         label, way, note = ours, None, f"{name.replace('_', ' ')} has no unit; taken as {ours}"
     else:
         label, way = choices[plain]
@@ -180,6 +197,39 @@ def from_name(name: str, values: NDArray[np.float64]) -> tuple[NDArray[np.float6
         note = f"sea pressure is absolute pressure less a standard atmosphere of {AIR_PRESSURE} dbar"
         return values - AIR_PRESSURE, note
     return values, None
+
+
+PERCENT_PER_DEGREE = 1.91
+"""By how much of its value at 25 degC the conductivity of water grows with each degree: Standard Methods for the
+Examination of Water and Wastewater, method 2510 B (from memory)."""
+
+
+def conductivity_in_situ(
+    at_25_degrees: NDArray[np.float64], temperature: NDArray[np.float64], percent: float = PERCENT_PER_DEGREE
+) -> NDArray[np.float64]:
+    """Conductivity in situ from specific conductance: what the instrument did to get there is taken back.
+
+    Parameters
+    ----------
+    at_25_degrees : ndarray
+        Specific conductance, referred to 25 degC, in any unit.
+    temperature : ndarray
+        degC, ITS-90.
+    percent : float
+        Change of conductivity with temperature that the instrument reckoned with, per cent of the value at 25 degC.
+
+    Returns
+    -------
+    ndarray
+        In the same unit: ``at_25_degrees * (1 + percent / 100 * (temperature - 25))``.
+
+    Examples
+    --------
+    >>> import numpy as np
+    >>> conductivity_in_situ(np.array([50.0, 50.0]), np.array([25.0, 15.0]))
+    array([50.  , 40.45])
+    """
+    return at_25_degrees * (1.0 + percent / 100.0 * (temperature - 25.0))
 
 
 def conversions() -> Mapping[str, Mapping[str, tuple[str, Convert]]]:

@@ -16,7 +16,15 @@ _HEMISPHERES = {"latitude": {"N": 1, "S": -1}, "longitude": {"E": 1, "W": -1}}
 _WORDS = {"NORTH": "N", "SOUTH": "S", "EAST": "E", "WEST": "W"}
 _BLANK = {"", "NAN", "NA", "N/A", "NONE", "NULL", "UNKNOWN", "-", "NAT"}
 _DAY_MONTH = re.compile(r"^(\d{1,2})[/.-](\d{1,2})[/.-](\d{4})(?:[ T,]+(.*))?$")
-_YEAR_FIRST = re.compile(r"^(\d{4})[/.](\d{1,2})[/.](\d{1,2})(?:[ T,]+(.*))?$")
+_YEAR_FIRST = re.compile(r"^(\d{4})[/.-](\d{1,2})[/.-](\d{1,2})(?:[ T,]+(.*))?$")
+_MONTH_NAMES = ("jan", "feb", "mar", "apr", "may", "jun", "jul", "aug", "sep", "oct", "nov", "dec")
+_MONTHS = {name: number for number, name in enumerate(_MONTH_NAMES, 1)}
+_NAMED_MONTH = re.compile(
+    r"^(?:[a-z]{3,9}\.?,? )?(?:(\d{1,2})[ -]([a-z]{3,9})\.?|([a-z]{3,9})\.? (\d{1,2}),?)[ ,-]+(\d{4})(?:[ T,]+(.*))?$",
+    re.IGNORECASE,
+)
+_CLOCK = re.compile(r"^(\d{1,2}):(\d{2})(:\d{2}(?:\.\d+)?)? ?(?:([AP])\.?M\.?)?(.*)$", re.IGNORECASE)
+_LONGEST = 100  # characters of a position or a time
 _NUMBER = re.compile(r"^\d+(?:\.\d*)?$|^\.\d+$")
 
 
@@ -50,9 +58,12 @@ def read_position(text: str, kind: str, *, where: str) -> float:
     upper = text.strip().upper()
     if upper in _BLANK:
         return math.nan
+    shown = text.strip() if len(text) <= _LONGEST else f"{text.strip()[:_LONGEST]}..."
     problem = InputError(
-        f"{where}: {kind} is {text.strip()!r}; write it as decimal degrees, or as degrees, minutes and N, S, E or W"
+        f"{where}: {kind} is {shown!r}; write it as decimal degrees, or as degrees, minutes and N, S, E or W"
     )
+    if len(upper) > _LONGEST:
+        raise problem
     for word, letter in _WORDS.items():
         upper = upper.replace(word, letter)
     letters = re.findall(r"[A-Z]", upper)
@@ -80,16 +91,46 @@ def read_position(text: str, kind: str, *, where: str) -> float:
     return -degrees if negative or (letters and signs[letters[0]] < 0) else degrees
 
 
-def read_time(text: str, *, where: str) -> np.datetime64:
+def _clock(text: str | None) -> str:
+    """A time of day as ISO 8601 has it, behind its T; nothing where nothing is said."""
+    match = _CLOCK.match(text or "")
+    if match is None:
+        return f"T{text}" if text else ""
+    hour = int(match[1])
+    if match[4]:
+        if not 1 <= hour <= 12:
+            return f"T{text}"  # refused as no time
+        hour = hour % 12 + 12 * (match[4].upper() == "P")
+    return f"T{hour:02d}:{match[2]}{match[3] or ''}{match[5]}"
+
+
+def _day_and_month(match: re.Match[str], plain: str, date_order: str | None, where: str) -> tuple[int, int]:
+    """Day and month of a date that has both as numbers."""
+    first, second = int(match[1]), int(match[2])
+    if date_order is not None:
+        return (first, second) if date_order == "day-first" else (second, first)
+    if first <= 12 and second <= 12 and first != second:
+        raise InputError(
+            f"{where}: the date {plain!r} may be {match[3]}-{second:02d}-{first:02d} or "
+            f"{match[3]}-{first:02d}-{second:02d}; write it year first, or say date_order = 'day-first' or "
+            "'month-first' in a TOML file beside this one"
+        )
+    return (first, second) if second <= 12 else (second, first)
+
+
+def read_time(text: str, *, where: str, date_order: str | None = None) -> np.datetime64:
     """A time in UTC from text; NaT where blank.
 
     Parameters
     ----------
     text : str
         ISO 8601 (``2026-01-31T12:00Z``; an offset is turned into UTC), ``2026/01/31 12:00``, ``20260131``, or day,
-        month and year in either order where only one order is possible (``31/01/2026``).
+        month and year in either order where only one order is possible (``31/01/2026``), or with the month's English
+        name (``31 Jan 2026``).
     where : str
         File and line, for the message.
+    date_order : str, optional
+        ``day-first`` or ``month-first``, where a person has said so.
 
     Returns
     -------
@@ -109,18 +150,16 @@ def read_time(text: str, *, where: str) -> np.datetime64:
     plain = " ".join(text.split())
     if plain.upper() in _BLANK:
         return NO_TIME
+    if len(plain) > _LONGEST:
+        raise InputError(f"{where}: {plain[:_LONGEST]!r}... is not a time; write it as 2026-01-31T12:00:00Z")
     iso = re.sub(r"\s*(?:UTC|GMT)$", "Z", plain, flags=re.IGNORECASE)
     if match := _YEAR_FIRST.match(iso):
-        iso = f"{match[1]}-{int(match[2]):02d}-{int(match[3]):02d}" + (f"T{match[4]}" if match[4] else "")
+        iso = f"{match[1]}-{int(match[2]):02d}-{int(match[3]):02d}{_clock(match[4])}"
     elif match := _DAY_MONTH.match(iso):
-        first, second = int(match[1]), int(match[2])
-        if first <= 12 and second <= 12 and first != second:
-            raise InputError(
-                f"{where}: the date {plain!r} may be {match[3]}-{second:02d}-{first:02d} or "
-                f"{match[3]}-{first:02d}-{second:02d}; write it year first"
-            )
-        day, month = (first, second) if second <= 12 else (second, first)
-        iso = f"{match[3]}-{month:02d}-{day:02d}" + (f"T{match[4]}" if match[4] else "")
+        day, month = _day_and_month(match, plain, date_order, where)
+        iso = f"{match[3]}-{month:02d}-{day:02d}{_clock(match[4])}"
+    elif (match := _NAMED_MONTH.match(iso)) and (month := _MONTHS.get((match[2] or match[3])[:3].lower(), 0)):
+        iso = f"{match[5]}-{month:02d}-{int(match[1] or match[4]):02d}{_clock(match[6])}"
     try:
         moment = datetime.fromisoformat(re.sub(r"\s+(?=Z$|[+-]\d)", "", iso))
     except ValueError:

@@ -73,7 +73,7 @@ def test_what_an_argo_file_says(argo):
     assert delayed.temperature.tolist() == [10.5, 11.5]
     assert delayed.flags["temperature"].tolist() == [1, 4]
     assert empty_adjusted.temperature.tolist() == [10.0, 11.0, 12.0]  # mode A, but ADJUSTED is all fill
-    assert empty_adjusted.flags["temperature"].tolist() == [2, 4, 2]
+    assert empty_adjusted.flags["temperature"].tolist() == [2, 4, 4]  # 'missing' beside a value: the source says none
     assert real_time.longitude == -160.0
     assert real_time.time == np.datetime64("1950-01-01") + np.timedelta64(27000 * 24 + 12, "h")
     assert np.isnat(empty_adjusted.time)
@@ -101,6 +101,66 @@ def test_one_parameter_may_have_a_mode_of_its_own(argo):
     cast = list(read_casts(argo))[1]
     assert cast.temperature.tolist() == [10.0, 11.0]
     assert cast.flags["temperature"].tolist() == [1, 3]
+
+
+def test_what_no_adjustment_saved_is_kept_and_bad(argo):
+    """Manual: a delayed-mode value that can't be adjusted is fill, flagged 4; the raw one must not stand in as good."""
+    with netCDF4.Dataset(argo, "a") as dataset:
+        dataset["TEMP_QC"][1] = np.array(list("111"), "S1")
+        dataset["TEMP_ADJUSTED"][1] = [10.5, FILL, FILL]
+        dataset["TEMP_ADJUSTED_QC"][1] = np.array(list("149"), "S1")
+    cast = list(read_casts(argo))[1]
+    assert cast.temperature.tolist() == [10.5, 11.0]
+    assert cast.flags["temperature"].tolist() == [1, 4]
+    with netCDF4.Dataset(argo, "a") as dataset:
+        dataset["TEMP_ADJUSTED"][1] = FILL
+        dataset["TEMP_ADJUSTED_QC"][1] = np.array(list("444"), "S1")
+    cast = list(read_casts(argo))[1]
+    assert (cast.temperature.tolist(), cast.flags["temperature"].tolist()) == ([10.0, 11.0], [4, 4])
+    with netCDF4.Dataset(argo, "a") as dataset:  # delayed mode that leaves nothing and says nothing of it
+        dataset["TEMP_ADJUSTED_QC"][1] = np.array(list("   "), "S1")
+    cast = list(read_casts(argo))[1]
+    assert (cast.temperature.tolist(), cast.flags["temperature"].tolist()) == ([10.0, 11.0], [3, 3])
+
+
+def test_a_synthetic_file_with_a_mode_for_each_parameter(argo):
+    """Salinity delayed, temperature as received, in one profile; the profile's own mode says D."""
+    with netCDF4.Dataset(argo, "a") as dataset:
+        for name, value in (("PSAL", 35.0), ("PSAL_ADJUSTED", 35.5)):
+            dataset.createVariable(name, "f4", ("N_PROF", "N_LEVELS"), fill_value=FILL)[:] = value
+            flags = dataset.createVariable(f"{name}_QC", "S1", ("N_PROF", "N_LEVELS"))
+            flags[:] = np.full((N, LEVELS), b"1")
+        names = dataset.createVariable("STATION_PARAMETERS", "S1", ("N_PROF", "N_PARAM", "STRING16"))
+        names[:] = np.stack([np.stack([chars("PSAL", 16), chars("TEMP", 16), chars("PRES", 16)])] * N)
+        modes = dataset.createVariable("PARAMETER_DATA_MODE", "S1", ("N_PROF", "N_PARAM"))
+        modes[:] = np.array([list("DRR")] * N, "S1")
+    cast = list(read_casts(argo))[1]
+    assert cast.salinity[:2].tolist() == [35.5, 35.5]
+    assert cast.temperature[:2].tolist() == [10.0, 11.0]
+    assert "adjusted values of salinity" in cast.notes
+    assert "values of pressure, temperature as received, not adjusted" in cast.notes
+
+
+def test_other_files_of_argo_are_refused_by_their_own_name(tmp_path):
+    with netCDF4.Dataset(tmp_path / "a.nc", "w") as dataset:
+        dataset.createDimension("N_MEASUREMENT", 2)
+        dataset.createDimension("STRING16", 16)
+        dataset.createVariable("DATA_TYPE", "S1", ("STRING16",))[:] = chars("Argo trajectory", 16)
+        dataset.createVariable("PRES", "f4", ("N_MEASUREMENT",))[:] = [1, 2]
+        dataset.createVariable("TEMP", "f4", ("N_MEASUREMENT",))[:] = [1, 2]
+    with pytest.raises(CastFileError, match=r"a\.nc: is a file of 'Argo trajectory', which holds no profiles"):
+        list(read_casts(tmp_path / "a.nc"))
+
+
+def test_the_wrong_order_of_dimensions(tmp_path):
+    with netCDF4.Dataset(tmp_path / "a.nc", "w") as dataset:
+        for name, size in (("N_PROF", 2), ("N_LEVELS", 3)):
+            dataset.createDimension(name, size)
+        dataset.createVariable("DATA_MODE", "S1", ("N_PROF",))[:] = np.array(list("RR"), "S1")
+        for name in ("PRES", "TEMP"):
+            dataset.createVariable(name, "f4", ("N_LEVELS", "N_PROF"))[:] = np.ones((3, 2))
+    with pytest.raises(CastFileError, match=r"PRES lies along \(N_LEVELS, N_PROF\); in an Argo profile file it must"):
+        list(read_casts(tmp_path / "a.nc"))
 
 
 def test_no_profile_to_use(argo):

@@ -72,6 +72,18 @@ def test_bottles_are_grouped_ordered_and_on_its_90():
     assert "levels ordered by pressure" not in second.notes
 
 
+def test_missing_beside_a_value_is_bad_and_so_is_a_code_that_the_manual_lacks():
+    (cast,) = parse(CTD.replace("10.1,3", "10.1,9").replace("35.0,1", "35.0,8").replace("35.1,6", "35.1,5"))
+    assert cast.flags["temperature"].tolist() == [1, 4, 4, 9]
+    assert cast.flags["salinity"].tolist() == [3, 4, 1, 9]
+
+
+def test_levels_in_air_are_flagged():
+    (cast,) = parse(CTD.replace("0.0,2,10.0", "-0.9,2,10.0"))
+    assert cast.flags["pressure"].tolist() == [4, 1, 1, 1]
+    assert "1 levels in air: flagged 4" in cast.notes
+
+
 def test_a_time_that_is_none_is_noted():
     (cast,) = parse(CTD.replace("TIME = 930", "TIME = 9999"))
     assert cast.time == np.datetime64("2026-01-31")

@@ -5,6 +5,7 @@ from hypothesis import strategies as st
 
 from ocean_sound.casts import read_casts
 from ocean_sound.casts.plain_csv import read_plain
+from ocean_sound.casts.settings import Settings
 from ocean_sound.errors import CastFileError, InputError
 from ocean_sound.files import write_csv
 
@@ -13,7 +14,8 @@ GOOD = "depth [m],temperature [degC],salinity [PSS-78]\n0,12.5,35.0\n10,11.0,35.
 
 def parse(text, mapping=None):
     data = text if isinstance(text, bytes) else text.encode()
-    return read_plain(data, "f.csv", source="f.csv", name="f", mapping=mapping or {})
+    (cast,) = read_plain(data, "f.csv", source="f.csv", name="f", settings=Settings(columns=mapping or {}))
+    return cast
 
 
 def columns(cast):
@@ -183,7 +185,16 @@ BAD = [
     ("depth,depth,temp\n1,2,3\n", r"both look like depth"),
     ("latitude: 95\ndepth,temp\n1,2\n", r"line 1: latitude is '95'"),
     ("date: 03/04/2026\ndepth,temp\n1,2\n", r"line 1: the date '03/04/2026' may be"),
-    ("cast,depth,temp\nA,1,2\nB,1,2\n", r"column 'cast' names 2 casts \(A, B"),
+    (
+        "lat,depth,temp\n54,1,2\n55,1,2\n",
+        r"latitude runs from 54 to 55: the rows are of several casts, .*--map id=COLUMN",
+    ),
+    ("depth,temp\n1,2\n3,4\ndepth,temp\n1,2\n", r"line 4, column 'depth': 'depth': the heads stand here again"),
+    ("depth,temp,temp QC\n1,2,1\n", r"column 'temp QC' looks like flags, .*--map \"temperature_flag=temp QC \[CODE"),
+    ("depth,temp,QC\n1,2,1\n", r"column 'QC' looks like flags, .*--map \"flag=QC \[CODE\]\", where CODE is qartod"),
+    ("depth,spec cond [mS/cm]\n1,50\n", r"specific conductance says .* only beside a temperature"),
+    ("depth,temp\n" + "1," * 2000 + "1\n", r"line 2 has 2001 cells where the heads above it name 2"),
+    (",".join(f"c{i}" for i in range(5000)) + "\n1,2\n", r"line 1 has 5000 columns; at most 4096 are read"),
 ]
 
 

@@ -89,6 +89,7 @@ def test_bombs_are_refused_before_they_are_opened(tmp_path, monkeypatch):
         (b" \n\t\n", "the file is empty"),
         (bytes(range(256)) * 4, "is neither text nor a format that is known; casts are read from plain CSV"),
         (b"depth,temp\n1,2\n\x00\x00\n", "is neither text nor a format"),
+        (PLAIN.encode("utf-16-le"), "looks like UTF-16 without a byte order mark; save it as UTF-8"),
         (b"\x1f\x8b\x08\x00", "is packed with gzip; unpack it first"),
         (b"\x89HDF\r\n\x1a\n" + bytes(100), "can't be opened as netCDF, it is cut short or damaged"),
         (b"CDF\x01" + bytes(3), "is cut short or damaged, its header ends early"),
