@@ -48,14 +48,19 @@ def fjord() -> dict[str, np.ndarray]:
     return _measured(pressure, conservative, absolute, longitude=-10.402, latitude=56.131)
 
 
-def shelf() -> dict[str, np.ndarray]:
+def shelf(lowered: float = 0.0) -> dict[str, np.ndarray]:
     """Ostray Edge, on the outer shelf in summer: a mixed layer over a sharp thermocline."""
     pressure = np.arange(1.0, 204.5, 1.0)
-    bent = _stepped(pressure, 5.3)
+    bent = _stepped(np.maximum(pressure - lowered, 0.0), 5.3)
     below = np.maximum(0.0, bent - 21.0)
     conservative = 15.4 - 5.3 * _step(bent, 31.0, 13.0) * (1.0 - np.exp(-below / 3.0)) - 0.0035 * below
     absolute = 35.31 + 0.14 * _step(bent, 34.0, 30.0) + 0.0005 * pressure
     return _measured(pressure, conservative, absolute, longitude=-11.258, latitude=56.024)
+
+
+def shelf_later() -> dict[str, np.ndarray]:
+    """Ostray Edge eight hours later: the internal tide has pushed the thermocline down by 9 m."""
+    return shelf(lowered=9.0)
 
 
 def basin() -> dict[str, np.ndarray]:
@@ -94,6 +99,7 @@ def _measured(
 CASTS = {
     "ostray_firth.csv": (fjord, "OF-03", "2024-08-12T07:40:00Z", 56.131, -10.402),
     "ostray_edge.csv": (shelf, "OE-11", "2024-08-13T10:05:00Z", 56.024, -11.258),
+    "ostray_edge_later.csv": (shelf_later, "OE-14", "2024-08-13T18:10:00Z", 56.024, -11.258),
     "ostray_deep.csv": (basin, "OD-27", "2024-08-15T16:20:00Z", 55.672, -13.510),
 }
 

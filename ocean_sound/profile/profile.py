@@ -2,32 +2,34 @@
 
 from __future__ import annotations
 
-from dataclasses import KW_ONLY, dataclass, replace
-from functools import cached_property
+from dataclasses import KW_ONLY, dataclass, field, replace
+from types import MappingProxyType
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from ..errors import InputError
+from ..files.cf import SPEED_ERROR
+from .adding import total
+from .columns import check, check_parts, column_of
 from .features import DEFAULT_PROMINENCE, Features, conjugate_depth_of, features_of
+from .layered import Layered
 
 if TYPE_CHECKING:
+    from collections.abc import Mapping
+
     import xarray
     from numpy.typing import ArrayLike, NDArray
 
     from ..casts import Cast
     from ..water import Equation
+    from .accuracy import Accuracy
 
-# No natural water comes near these: fresh water at 0 degC carries sound at 1402 m/s, the deepest trench about 1630.
-# Wide enough for the steep gradients of textbook cases, narrow enough to catch feet per second and a column of depths.
-SLOWEST_SPEED = 1000.0  # m/s
-FASTEST_SPEED = 3000.0  # m/s
-
+_STATED = "stated"
 _UNKNOWN_TIME = np.datetime64("NaT", "ns")
 
 
 @dataclass(frozen=True, eq=False, repr=False)
-class Profile:
+class Profile(Layered):
     """A sound-speed profile, linear in depth between its levels.
 
     Parameters
@@ -38,7 +40,14 @@ class Profile:
         Sound speed, m/s, between 1000 and 3000.
     uncertainty : array_like, shape (levels,), optional
         Standard uncertainty (k = 1) of the speed, m/s, 0 or more; NaN at a level where it is not known (outside the
-        range of the equation, say). None where nothing is known of it.
+        range of the equation, say). None where nothing is known of it. Where shapes or noise are given it follows from
+        them; where it is given and they don't add up to it, it stands alone, as the shape ``stated``.
+    shapes : mapping of str to array_like, each of shape (levels,), optional
+        What the uncertainty is made of: for each cause the error of the speed on each level, m/s, when the cause is one
+        standard uncertainty above the truth. The causes are independent of each other, each is one number for all
+        depths: its errors on two levels go together, and don't average away.
+    noise : array_like, shape (levels,), optional
+        Standard uncertainty (k = 1), m/s, of what is independent from level to level.
     id : str
         The name of the cast that it comes from.
     time : numpy.datetime64
@@ -86,19 +95,48 @@ class Profile:
     equation: str = ""
     notes: tuple[str, ...] = ()
     surface_assumed: bool = False
+    shapes: Mapping[str, NDArray[np.float64]] = field(default_factory=dict)
+    noise: NDArray[np.float64] | None = None
 
     def __post_init__(self) -> None:
         # A frozen object may still set its own fields while it is being made.
         put = object.__setattr__
-        put(self, "depth", _column(self.depth, "depth", self.id))
-        put(self, "speed", _column(self.speed, "speed", self.id))
+        put(self, "depth", column_of(self.depth, "depth", self.id))
+        put(self, "speed", column_of(self.speed, "speed", self.id))
         if self.uncertainty is not None:
-            put(self, "uncertainty", _column(self.uncertainty, "uncertainty", self.id))
+            put(self, "uncertainty", column_of(self.uncertainty, "uncertainty", self.id))
+        self._settle_uncertainty()
         put(self, "time", np.asarray(self.time, dtype="datetime64[ns]")[()])
         put(self, "latitude", float(self.latitude))
         put(self, "longitude", float(self.longitude))
         put(self, "notes", tuple(self.notes))
-        _check(self)
+        check(self)
+
+    def _settle_uncertainty(self) -> None:
+        """Make uncertainty, shapes and noise agree."""
+        shapes = {name: column_of(shape, f"shape {name}", self.id) for name, shape in self.shapes.items()}
+        noise = None if self.noise is None else column_of(self.noise, "noise", self.id)
+        stated = self.uncertainty
+        parts = [*shapes.values(), *([] if noise is None else [noise])]
+        whole = None
+        if parts and (stated is None or all(part.shape == stated.shape for part in parts)):
+            check_parts(self.depth, shapes, noise, self.id)
+            whole = column_of(total(shapes, noise), "uncertainty", self.id)
+        if stated is not None and (
+            whole is None or not np.allclose(stated, whole, rtol=1e-9, atol=0.0, equal_nan=True)
+        ):
+            shapes, noise, whole = {_STATED: stated}, None, stated
+        put = object.__setattr__
+        put(self, "shapes", MappingProxyType(shapes))
+        put(self, "noise", noise)
+        put(self, "uncertainty", whole if stated is None else stated)
+
+    def __getstate__(self) -> dict[str, Any]:
+        # A read-only mapping can't be pickled; it travels as a plain one.
+        return {**self.__dict__, "shapes": dict(self.shapes)}
+
+    def __setstate__(self, state: dict[str, Any]) -> None:
+        self.__dict__.update({**state, "shapes": MappingProxyType(state["shapes"])})
 
     @classmethod
     def from_cast(
@@ -108,9 +146,10 @@ class Profile:
         equation: str | Equation = "teos10",
         salinity: float | None = None,
         use_suspect: bool = False,
-        temperature_uncertainty: float = 0.002,
+        accuracy: Accuracy | str | None = None,
+        temperature_uncertainty: float | None = None,
         salinity_uncertainty: float | None = None,
-        pressure_uncertainty: float = 2.4,
+        pressure_uncertainty: float | None = None,
         sound_speed_uncertainty: float | None = None,
     ) -> Profile:
         """The sound-speed profile of a cast.
@@ -126,20 +165,23 @@ class Profile:
             Practical salinity to assume for a cast that has neither salinity nor conductivity.
         use_suspect : bool
             Whether values flagged 3 (suspect) are used too.
-        temperature_uncertainty, salinity_uncertainty, pressure_uncertainty : float
-            Standard uncertainties (k = 1) of the measurements: degC, practical salinity, dbar (taken as metres for a
-            cast of depths). The defaults are the accuracies that the Argo programme states, 0.002 degC, 0.01 and
-            2.4 dbar (Wong et al. 2020, Frontiers in Marine Science 7:700; from memory); an assumed salinity is taken to
-            be good to 1.
-        sound_speed_uncertainty : float, optional
-            Standard uncertainty, m/s, of a sound speed that was measured.
+        accuracy : Accuracy or str, optional
+            What is known of the instrument: an `Accuracy`, or the name of one in `INSTRUMENTS` ("float", "ctd", "xbt").
+            Where not given, an expendable probe's if the cast says that it is one's, with its own depth uncertainty if
+            it states one; else what the Argo programme states for floats, 0.002 degC, 0.01 and 2.4 dbar (Wong et al.
+            2020, Frontiers in Marine Science 7:700; from memory).
+        temperature_uncertainty, salinity_uncertainty, pressure_uncertainty, sound_speed_uncertainty : float, optional
+            Standard uncertainties (k = 1) of the calibration that replace those of `accuracy`: degC, practical salinity
+            (an assumed one is taken to be good to 1), dbar (metres for a cast of depths), m/s. What a cast states for
+            single levels in its own `uncertainties` goes before all of these.
 
         Returns
         -------
         Profile
-            With `notes`, one line for each thing assumed, left out or added. Its uncertainty is the root of the sum of
-            squares of the equation's standard error and the measurements' shares; NaN on levels outside the range of
-            the equation, where its standard error no longer holds.
+            With `notes`, one line for each thing assumed, left out or added; with `shapes` by the names equation,
+            temperature, salinity, conductivity, pressure or depth, sound_speed, completion_temperature and the like
+            (what was added, not measured), and `noise`. The uncertainty is NaN on levels outside the range of the
+            equation, where its standard error no longer holds.
 
         Raises
         ------
@@ -153,6 +195,11 @@ class Profile:
         cast that goes down and up the longer way is used, without the levels that are not below all before them. A cast
         that begins within 50 m of the surface gets a level at 0 m with the water of its first level.
 
+        An error of pressure or depth puts the right water at the wrong depth, and computes its speed for the pressure
+        there: the shape is the change of speed with depth less the effect of pressure. Where salinity is computed from
+        conductivity, errors of temperature and pressure act through it too, and the stated uncertainty of salinity is
+        taken to come from conductivity. Errors of depth that come from the density used are neglected (about 1 mm/s).
+
         Examples
         --------
         >>> from ocean_sound.casts import Cast
@@ -163,16 +210,47 @@ class Profile:
         <Profile A1: 2 levels, 0 to 99.2787 m, 1488.0 to 1496.8 m/s>
         """
         from ..casts import CastBlock
-        from .speeds import Accuracy, speeds_of_block
+        from .accuracy import accuracy_by_name
+        from .speeds import speeds_of_block
 
-        accuracy = Accuracy(
-            temperature_uncertainty, salinity_uncertainty, pressure_uncertainty, sound_speed_uncertainty
+        known = accuracy_by_name(accuracy, cast.attributes).but(
+            temperature=temperature_uncertainty,
+            salinity=salinity_uncertainty,
+            pressure=pressure_uncertainty,
+            sound_speed=sound_speed_uncertainty,
         )
         block = CastBlock.from_casts([cast])
-        columns = speeds_of_block(
-            block, equation=equation, salinity=salinity, use_suspect=use_suspect, accuracy=accuracy
-        )
+        columns = speeds_of_block(block, equation=equation, salinity=salinity, use_suspect=use_suspect, accuracy=known)
         return columns.profile(0)
+
+    @classmethod
+    def from_dataset(cls, dataset: xarray.Dataset) -> Profile:
+        """The profile that `to_dataset` made, or a file of it opened by xarray.
+
+        Parameters
+        ----------
+        dataset : xarray.Dataset
+            With `depth` and `sound_speed` on one dimension, and what else `to_dataset` writes.
+
+        Returns
+        -------
+        Profile
+            With its shapes and noise.
+
+        Raises
+        ------
+        InputError
+            Depth or sound speed is missing.
+
+        Examples
+        --------
+        >>> profile = Profile([0.0, 10.0], [1500.0, 1490.0], shapes={"equation": [0.1, 0.1]}, noise=[0.0, 0.1])
+        >>> Profile.from_dataset(profile.to_dataset()).shapes["equation"]
+        array([0.1, 0.1])
+        """
+        from .tables import profile_of_dataset
+
+        return profile_of_dataset(cls, dataset)
 
     def __len__(self) -> int:
         return self.depth.size
@@ -184,133 +262,42 @@ class Profile:
             f"{self.speed.min():.1f} to {self.speed.max():.1f} m/s>"
         )
 
-    @cached_property
-    def gradient(self) -> NDArray[np.float64]:
-        """Gradient of sound speed in each layer, 1/s, positive where speed grows downward; shape (levels - 1,)."""
-        gradient: NDArray[np.float64] = np.diff(self.speed) / np.diff(self.depth)
-        gradient.flags.writeable = False
-        return gradient
-
-    def at(self, depth: ArrayLike) -> Any:
-        """The sound speed at a depth, m/s, by linear interpolation.
+    def at_levels(self, depth: ArrayLike) -> Profile:
+        """The profile on other levels: speed, shapes and noise by linear interpolation.
 
         Parameters
         ----------
-        depth : float or array_like
-            Depth, m, within the levels of the profile.
+        depth : array_like
+            Depths, m, within the profile, strictly increasing.
 
         Returns
         -------
-        float or numpy.ndarray
-            Sound speed, m/s, in the shape of `depth`.
+        Profile
 
         Raises
         ------
         InputError
-            If a depth lies above the first or below the last level, or is not a number.
+            If a depth lies outside the profile, or they do not increase.
 
         Examples
         --------
-        >>> Profile([0.0, 10.0], [1500.0, 1490.0]).at([0.0, 2.5])
-        array([1500. , 1497.5])
+        >>> Profile([0.0, 10.0], [1500.0, 1490.0], [0.1, 0.3]).at_levels([0.0, 5.0]).uncertainty
+        array([0.1, 0.2])
         """
         wanted = np.asarray(depth, dtype=np.float64)
         self._require_within(wanted)
-        speed = np.interp(wanted, self.depth, self.speed)
-        return float(speed) if wanted.ndim == 0 else speed
 
-    def mean_speed(self, top: float | None = None, bottom: float | None = None) -> float:
-        """The depth average of sound speed between two depths, m/s.
+        def here(column: NDArray[np.float64]) -> NDArray[np.float64]:
+            return np.interp(wanted, self.depth, column)
 
-        Parameters
-        ----------
-        top, bottom : float, optional
-            The two depths, m, in either order; the first and the last level where not given.
-
-        Returns
-        -------
-        float
-            The integral of speed over depth, divided by the distance; at two equal depths the speed there.
-
-        Raises
-        ------
-        InputError
-            If a depth lies outside the profile.
-
-        Examples
-        --------
-        >>> Profile([0.0, 10.0], [1500.0, 1490.0]).mean_speed()
-        1495.0
-        """
-        depth, speed = self._between(top, bottom)
-        if depth[-1] == depth[0]:
-            return float(speed[0])
-        return float(np.sum(np.diff(depth) * (speed[1:] + speed[:-1])) / (2.0 * (depth[-1] - depth[0])))
-
-    def travel_time(self, top: float | None = None, bottom: float | None = None) -> float:
-        """The one-way travel time of sound straight up or down between two depths, s.
-
-        Parameters
-        ----------
-        top, bottom : float, optional
-            The two depths, m, in either order; the first and the last level where not given.
-
-        Returns
-        -------
-        float
-            Travel time, s, never negative.
-
-        Raises
-        ------
-        InputError
-            If a depth lies outside the profile.
-
-        Notes
-        -----
-        In a layer of thickness h from speed c1 to c2 the time is (h / g) ln(c2 / c1), g = (c2 - c1) / h. Written as
-        2 h / (c1 + c2) * atanh(y) / y with y = (c2 - c1) / (c1 + c2) it cancels nowhere, however small the gradient.
-
-        Examples
-        --------
-        >>> round(Profile([0.0, 1000.0], [1500.0, 1517.0]).travel_time(), 12)
-        0.662917191661
-        """
-        depth, speed = self._between(top, bottom)
-        total = speed[1:] + speed[:-1]
-        y = np.diff(speed) / total
-        stretch = np.ones_like(y)
-        np.divide(np.arctanh(y), y, out=stretch, where=y != 0.0)
-        return float(np.sum(2.0 * np.diff(depth) / total * stretch))
-
-    def harmonic_mean_speed(self, top: float | None = None, bottom: float | None = None) -> float:
-        """The harmonic mean of sound speed between two depths, m/s: the distance over the vertical travel time.
-
-        This is the one speed with which an echo straight below gives the true depth.
-
-        Parameters
-        ----------
-        top, bottom : float, optional
-            The two depths, m, in either order; the first and the last level where not given.
-
-        Returns
-        -------
-        float
-            Distance over travel time; at two equal depths the speed there.
-
-        Raises
-        ------
-        InputError
-            If a depth lies outside the profile.
-
-        Examples
-        --------
-        >>> Profile([0.0, 10.0], [1500.0, 1500.0]).harmonic_mean_speed(2.0, 7.0)
-        1500.0
-        """
-        depth, speed = self._between(top, bottom)
-        if depth[-1] == depth[0]:
-            return float(speed[0])
-        return float(depth[-1] - depth[0]) / self.travel_time(top, bottom)
+        return replace(
+            self,
+            depth=wanted,
+            speed=here(self.speed),
+            uncertainty=None,
+            shapes={name: here(shape) for name, shape in self.shapes.items()},
+            noise=None if self.noise is None else here(self.noise),
+        )
 
     def features(self, *, seabed_depth: float | None = None, prominence: float = DEFAULT_PROMINENCE) -> Features:
         """The sonic layer, ducts, deep channel, gradients and mean speeds of the profile.
@@ -390,7 +377,9 @@ class Profile:
             self,
             depth=np.concatenate(([0.0], self.depth)),
             speed=np.concatenate((self.speed[:1], self.speed)),
-            uncertainty=None if self.uncertainty is None else np.concatenate((self.uncertainty[:1], self.uncertainty)),
+            uncertainty=None,
+            shapes={name: np.concatenate((shape[:1], shape)) for name, shape in self.shapes.items()},
+            noise=None if self.noise is None else np.concatenate((self.noise[:1], self.noise)),
             notes=(*self.notes, note),
             surface_assumed=True,
         )
@@ -404,7 +393,10 @@ class Profile:
         ['depth', 'sound_speed']
         """
         columns = {"depth": self.depth, "sound_speed": self.speed}
-        return columns if self.uncertainty is None else columns | {"sound_speed_uncertainty": self.uncertainty}
+        if self.uncertainty is not None:
+            columns["sound_speed_uncertainty"] = self.uncertainty
+        columns |= {f"{SPEED_ERROR}{name}": shape for name, shape in self.shapes.items() if name != _STATED}
+        return columns if self.noise is None else columns | {"sound_speed_noise": self.noise}
 
     def about(self) -> dict[str, Any]:
         """Whose profile it is and how it came about; what is not known is None.
@@ -429,7 +421,8 @@ class Profile:
         Returns
         -------
         xarray.Dataset
-            `sound_speed` and, where known, `sound_speed_uncertainty` on `level`, with `depth` as a coordinate.
+            `sound_speed` and, where known, `sound_speed_uncertainty`, `sound_speed_error_<shape>` and
+            `sound_speed_noise` on `level`, with `depth` as a coordinate.
 
         Examples
         --------
@@ -437,106 +430,6 @@ class Profile:
         >>> dataset["sound_speed"].attrs["standard_name"], dataset["depth"].attrs["positive"]
         ('speed_of_sound_in_sea_water', 'down')
         """
-        import xarray as xr
+        from .tables import dataset_of_profile
 
-        from ..files.cf import attributes
-
-        speed = {**attributes("sound_speed"), **({"equation": self.equation} if self.equation else {})}
-        variables = {"sound_speed": ("level", self.speed.copy(), speed)}
-        if self.uncertainty is not None:
-            speed["ancillary_variables"] = "sound_speed_uncertainty"
-            name = "sound_speed_uncertainty"
-            variables[name] = ("level", self.uncertainty.copy(), dict(attributes(name)))
-        coordinates = {
-            "depth": ("level", self.depth.copy(), dict(attributes("depth"))),
-            "time": ((), self.time, dict(attributes("time"))),
-            "latitude": ((), self.latitude, dict(attributes("latitude"))),
-            "longitude": ((), self.longitude, dict(attributes("longitude"))),
-            "cast_id": ((), self.id, dict(attributes("cast_id"))),
-        }
-        notes = {"notes": "\n".join(self.notes)} if self.notes else {}
-        return xr.Dataset(variables, coordinates, {"featureType": "profile", **notes})
-
-    def _between(self, top: float | None, bottom: float | None) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-        """Depth and speed of the part between two depths, both ends included; at equal depths one point twice."""
-        ends = np.array(
-            [self.depth[0] if top is None else top, self.depth[-1] if bottom is None else bottom], dtype=np.float64
-        )
-        self._require_within(ends)
-        ends.sort()
-        inner = slice(np.searchsorted(self.depth, ends[0], "right"), np.searchsorted(self.depth, ends[1], "left"))
-        at_ends = np.interp(ends, self.depth, self.speed)
-        return (
-            np.concatenate((ends[:1], self.depth[inner], ends[1:])),
-            np.concatenate((at_ends[:1], self.speed[inner], at_ends[1:])),
-        )
-
-    def _require_within(self, depth: NDArray[np.float64]) -> None:
-        outside = ~((depth >= self.depth[0]) & (depth <= self.depth[-1]))
-        if outside.any():
-            raise InputError(
-                f"{_whose(self.id)}: depth {depth[outside].flat[0]:g} m lies outside the profile; "
-                f"a depth from {self.depth[0]:g} to {self.depth[-1]:g} m would be right"
-            )
-
-
-def _whose(name: str) -> str:
-    return f"profile {name!r}" if name else "profile"
-
-
-def _column(values: Any, field: str, name: str) -> NDArray[np.float64]:
-    """A read-only copy as a flat float64 array."""
-    if isinstance(values, np.ma.MaskedArray):
-        values = np.ma.filled(np.ma.asarray(values, dtype=np.float64), np.nan)
-    try:
-        column = np.array(values, dtype=np.float64)
-    except (TypeError, ValueError):
-        raise InputError(
-            f"{_whose(name)}: {field} is not a list of numbers; one number for each level would be right"
-        ) from None
-    if column.ndim != 1:
-        raise InputError(
-            f"{_whose(name)}: {field} has {column.ndim} dimensions; one, with a number for each level, would be right"
-        )
-    column.flags.writeable = False
-    return column
-
-
-def _check(profile: Profile) -> None:
-    """Raise InputError for the first thing that keeps these columns from being a profile."""
-    depth, speed, uncertainty = profile.depth, profile.speed, profile.uncertainty
-    whose = _whose(profile.id)
-    for field, column in (("speed", speed), ("uncertainty", uncertainty)):
-        if column is not None and column.size != depth.size:
-            raise InputError(
-                f"{whose}: {depth.size} depths and {column.size} values of {field}; as many of each would be right"
-            )
-    if depth.size < 2:
-        raise InputError(f"{whose}: {depth.size} level{'s' * (depth.size != 1)}; a profile needs at least 2")
-    _check_levels(whose, "depth", depth, np.isfinite(depth) & (depth >= 0.0), "m; a finite depth of 0 m or more")
-    _check_levels(
-        whose,
-        "speed",
-        speed,
-        (speed >= SLOWEST_SPEED) & (speed <= FASTEST_SPEED),
-        f"m/s; {SLOWEST_SPEED:g} to {FASTEST_SPEED:g} m/s",
-    )
-    if uncertainty is not None:
-        good = np.isnan(uncertainty) | ((uncertainty >= 0.0) & np.isfinite(uncertainty))
-        _check_levels(whose, "uncertainty", uncertainty, good, "m/s; 0 m/s or more, or NaN where it is not known,")
-    falls = np.flatnonzero(np.diff(depth) <= 0.0)
-    if falls.size:
-        level = int(falls[0]) + 1
-        raise InputError(
-            f"{whose}: level {level} (counted from 0) lies at {depth[level]:g} m, not below the level before it at "
-            f"{depth[level - 1]:g} m; depths that strictly increase would be right"
-        )
-
-
-def _check_levels(whose: str, field: str, column: NDArray[np.float64], good: NDArray[np.bool_], right: str) -> None:
-    bad = np.flatnonzero(~good)
-    if bad.size:
-        level = int(bad[0])
-        raise InputError(
-            f"{whose}: {field} at level {level} (counted from 0) is {column[level]:g} {right} would be right"
-        )
+        return dataset_of_profile(self)

@@ -2,17 +2,19 @@
 
 from __future__ import annotations
 
-from collections import Counter
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
+from ..casts.cast import CARRIED_UP
+from ..casts.completing import ASSUMED_SALINITY_UNCERTAINTY
 from ..errors import InputError
 from ..water import (
     DEFAULT_EQUATION,
     Equation,
     assumptions,
+    depth_and_speed_of_columns,
     depth_from_density,
     find_equation,
     pressure_of_columns,
@@ -20,28 +22,26 @@ from ..water import (
     salinity_from_conductivity,
     speed_of_columns,
 )
+from .accuracy import PRESSURE_UNCERTAINTY, SALINITY_UNCERTAINTY, Accuracy, accuracy_by_name, columns_of
+from .adding import total
 from .features import SURFACE_REACH
 from .ordering import downward
 from .profile import Profile
+from .shapes import Doubt
 
 if TYPE_CHECKING:
+    from collections.abc import Mapping, Sequence
+
     from numpy.typing import NDArray
 
     from ..casts import CastBlock
 
     Floats = NDArray[np.float64]
 
-# Accuracies that the Argo programme states for its floats: Wong et al. (2020), Frontiers in Marine Science 7:700 (from
-# memory, not confirmed). A CTD lowered from a ship does better; an expendable probe far worse.
-TEMPERATURE_UNCERTAINTY = 0.002  # degC
-SALINITY_UNCERTAINTY = 0.01
-PRESSURE_UNCERTAINTY = 2.4  # dbar
-# Most of the open ocean lies within 1 of a salinity that one would assume there (common practice).
-ASSUMED_SALINITY_UNCERTAINTY = 1.0
-
 _USABLE_FLAGS = (1, 2)
 _SUSPECT = 3
 _LEVELS_NEEDED = 2
+_ALL = slice(None)
 _VARIABLES = ("pressure", "depth", "temperature", "salinity", "conductivity", "sound_speed")
 # What sea or lake water can be at all; beyond it a value is a fault of the instrument, whatever its flag says.
 _POSSIBLE = {
@@ -52,44 +52,6 @@ _POSSIBLE = {
     "conductivity": (0.0, 20.0),
     "sound_speed": (1000.0, 3000.0),
 }
-
-
-@dataclass(frozen=True)
-class Accuracy:
-    """Standard uncertainties (k = 1) of what a cast measured, taken as alike on every level.
-
-    Parameters
-    ----------
-    temperature : float
-        degC.
-    salinity : float, optional
-        Practical salinity; where not given 0.01 if it was measured and 1 if it is assumed.
-    pressure : float
-        dbar; also taken as metres for casts that give depth.
-    sound_speed : float, optional
-        m/s, for casts that measured the speed itself; unknown where not given.
-
-    Raises
-    ------
-    InputError
-        If one is negative or not finite.
-
-    Examples
-    --------
-    >>> Accuracy(temperature=0.1).pressure
-    2.4
-    """
-
-    temperature: float = TEMPERATURE_UNCERTAINTY
-    salinity: float | None = None
-    pressure: float = PRESSURE_UNCERTAINTY
-    sound_speed: float | None = None
-
-    def __post_init__(self) -> None:
-        for name in ("temperature", "salinity", "pressure", "sound_speed"):
-            value = getattr(self, name)
-            if value is not None and not (np.isfinite(value) and value >= 0.0):
-                raise InputError(f"{name}_uncertainty is {value:g}; a finite number of 0 or more would be right")
 
 
 @dataclass(frozen=True, eq=False)
@@ -106,6 +68,10 @@ class SpeedColumns:
         Levels of each cast; 0 where the cast gave no profile.
     depth, speed, uncertainty : numpy.ndarray, shape (levels,)
         m, m/s, m/s (k = 1; NaN where unknown). Depth strictly increases within a cast.
+    shapes : mapping of str to numpy.ndarray, each of shape (levels,)
+        What the uncertainty is made of, m/s: see `Profile`; zero for casts that have no such share.
+    noise : numpy.ndarray, shape (levels,)
+        The share that is independent on each level, m/s.
     level : numpy.ndarray of int, shape (levels,)
         Index into the columns of the block, -1 for a level added at the surface.
     direct : numpy.ndarray of bool, shape (casts,)
@@ -122,6 +88,8 @@ class SpeedColumns:
     depth: Floats
     speed: Floats
     uncertainty: Floats
+    shapes: Mapping[str, Floats]
+    noise: Floats
     level: NDArray[np.int64]
     direct: NDArray[np.bool_]
     notes: tuple[tuple[str, ...], ...]
@@ -152,19 +120,30 @@ class SpeedColumns:
         if self.reasons[index]:
             raise InputError(f"cast {block.id[index]!r}: {self.reasons[index]}")
         rows = slice(self.starts[index], self.starts[index + 1])
-        uncertainty = self.uncertainty[rows]
+        shapes: dict[str, Floats] = {}
+        noise = None
+        if not np.isnan(self.uncertainty[rows]).all():
+            own = {name: shape[rows] for name, shape in self.shapes.items()}
+            shapes = {name: shape for name, shape in own.items() if np.any(shape != 0.0)}
+            noise = self.noise[rows] if self.noise[rows].any() else None
         return Profile(
             self.depth[rows],
             self.speed[rows],
-            None if np.isnan(uncertainty).all() else uncertainty,
+            shapes=shapes,
+            noise=noise,
             id=block.id[index],
             time=block.time[index],
             latitude=block.latitude[index],
             longitude=block.longitude[index],
             equation="" if self.direct[index] else self.equation,
             notes=(*block.notes[index], *self.notes[index]),
-            surface_assumed=bool(self.level[rows][0] < 0),
+            surface_assumed=self._surface_assumed(int(self.level[rows][0])),
         )
+
+    def _surface_assumed(self, level: int) -> bool:
+        """Whether a cast's first level was carried up to the surface, here or before."""
+        origins = [self.block.origins[name] for name in ("temperature", "sound_speed") if name in self.block.origins]
+        return level < 0 or any(column[level] == CARRIED_UP for column in origins)
 
 
 def speeds_of_block(
@@ -173,7 +152,7 @@ def speeds_of_block(
     equation: str | Equation = DEFAULT_EQUATION,
     salinity: float | None = None,
     use_suspect: bool = False,
-    accuracy: Accuracy | None = None,
+    accuracy: Accuracy | str | None = None,
 ) -> SpeedColumns:
     """Depth, sound speed and its uncertainty for every usable level of many casts at once.
 
@@ -183,8 +162,9 @@ def speeds_of_block(
         The casts; never changed.
     equation, salinity, use_suspect
         As for `Profile.from_cast`.
-    accuracy : Accuracy, optional
-        Uncertainties of the measurements; those of the Argo programme where not given.
+    accuracy : Accuracy or str, optional
+        Uncertainties of the measurements, or the kind of instrument; where not given, for each cast by what it says of
+        itself: those of an expendable probe, else those of the Argo programme.
 
     Returns
     -------
@@ -208,19 +188,23 @@ def speeds_of_block(
     low, high = _POSSIBLE["salinity"]
     if salinity is not None and not low <= salinity <= high:
         raise InputError(f"salinity is {salinity:g}; a practical salinity from {low:g} to {high:g} would be right")
-    levels = _Levels(block, chosen, salinity, use_suspect=use_suspect)
+    accuracies = [accuracy_by_name(accuracy, attributes) for attributes in block.attributes]
+    levels = Levels(block, chosen, salinity, use_suspect=use_suspect)
     levels.choose()
     levels.arrange()
     levels.place()
     speed = levels.speeds()
-    uncertainty = levels.uncertainties(speed, accuracy or Accuracy())
+    shapes, noise = Doubt(levels, columns_of(accuracies), speed).shapes()
+    levels.tell_basis(accuracies)
     return SpeedColumns(
         block=block,
         equation=chosen.name,
         row_size=levels.row_size,
         depth=levels.columns["depth"],
         speed=speed,
-        uncertainty=uncertainty,
+        uncertainty=total(shapes, noise),
+        shapes=shapes,
+        noise=noise,
         level=levels.level,
         direct=levels.direct,
         notes=tuple(map(tuple, levels.notes)),
@@ -228,7 +212,7 @@ def speeds_of_block(
     )
 
 
-class _Levels:
+class Levels:
     """The columns on their way: choose what each cast is made of, arrange its levels, place them in depth, compute.
 
     Before `arrange` the columns are as long as those of the block; afterwards they hold usable levels only.
@@ -247,6 +231,7 @@ class _Levels:
         wet = self.has["salinity"] | self.has["conductivity"]
         self.direct = self.has["sound_speed"] & ~(self.has["temperature"] & wet)
         self.by_pressure = self.has["pressure"] & ~(self.direct & self.has["depth"])
+        self.from_conductivity = self.has["conductivity"] & ~self.has["salinity"] & ~self.direct
 
     def _usable(self, name: str, flags: tuple[int, ...]) -> Floats:
         """A copy of a column with NaN for every value that may not be used."""
@@ -266,37 +251,43 @@ class _Levels:
     def _any(self, mask: NDArray[np.bool_]) -> NDArray[np.bool_]:
         return np.logical_or.reduceat(mask, self.block.starts[:-1])
 
-    def _spread(self, per_cast: NDArray[Any]) -> NDArray[Any]:
+    def spread(self, per_cast: NDArray[Any]) -> NDArray[Any]:
         """One value for each level of what is one value for each cast."""
         return np.repeat(per_cast, self.row_size)
 
     def choose(self) -> None:
         """What stands for the vertical and the salinity of each cast; a reason where there can be no profile."""
         columns, has = self.columns, self.has
-        latitude = self._spread(self.block.latitude)
+        latitude = self.spread(self.block.latitude)
         depth, pressure = columns["depth"], columns["pressure"]
-        self.vertical = np.where(self._spread(self.by_pressure), pressure, depth)
-        columns["pressure"] = np.where(self._spread(self.by_pressure), pressure, pressure_of_columns(depth, latitude))
-        from_conductivity = has["conductivity"] & ~has["salinity"] & ~self.direct
-        if from_conductivity.any():
-            # In air and in fresh water the scale gives slightly negative salinities: pressure and result are held at 0.
-            found = np.maximum(
-                salinity_from_conductivity(
-                    columns["conductivity"], columns["temperature"], np.maximum(columns["pressure"], 0.0)
-                ),
-                0.0,
-            )
-            columns["salinity"] = np.where(self._spread(from_conductivity), found, columns["salinity"])
+        self.vertical = np.where(self.spread(self.by_pressure), pressure, depth)
+        columns["pressure"] = np.where(self.spread(self.by_pressure), pressure, pressure_of_columns(depth, latitude))
+        if self.from_conductivity.any():
+            columns["salinity"] = np.where(self.spread(self.from_conductivity), self._salinity(), columns["salinity"])
         self.dry = ~has["salinity"] & ~has["conductivity"] & ~self.direct
         assumed = self.salinity
         if assumed is None and "salinity" not in self.equation.arguments:
             assumed = 0.0
         if assumed is not None:
-            columns["salinity"] = np.where(self._spread(self.dry), assumed, columns["salinity"])
+            columns["salinity"] = np.where(self.spread(self.dry), assumed, columns["salinity"])
         for index in range(len(self.block)):
             self.reasons[index] = self._reason(index, assumed)
             if not self.reasons[index]:
-                self.notes[index] += self._choices(index, assumed, conductivity=bool(from_conductivity[index]))
+                self.notes[index] += self._choices(index, assumed, conductivity=bool(self.from_conductivity[index]))
+
+    def _salinity(self, *, temperature: float = 0.0, conductivity: float = 0.0, vertical: float = 0.0) -> Floats:
+        """Salinity from conductivity, with the inputs moved by so much."""
+        columns = self.columns
+        # In air and in fresh water the scale gives slightly negative salinities: pressure and result are held at 0.
+        found: Floats = np.maximum(
+            salinity_from_conductivity(
+                columns["conductivity"] + conductivity,
+                columns["temperature"] + temperature,
+                np.maximum(columns["pressure"] + vertical, 0.0),
+            ),
+            0.0,
+        )
+        return found
 
     def _reason(self, index: int, assumed: float | None) -> str:
         """Why a cast can't give a profile for want of a variable."""
@@ -351,7 +342,7 @@ class _Levels:
     def arrange(self) -> None:
         """Keep the usable levels of each cast, in an order that goes strictly down."""
         columns = self.columns
-        direct = self._spread(self.direct)
+        direct = self.spread(self.direct)
         # The first of these that holds is why a level is left out.
         lacking = {
             "without usable pressure or depth": ~np.isfinite(self.vertical),
@@ -366,7 +357,8 @@ class _Levels:
         for index, (start, stop) in enumerate(zip(self.block.starts[:-1], self.block.starts[1:], strict=True)):
             usable = np.flatnonzero(why[start:stop] == len(lacking)) + start
             order, sorted_ = downward(self.vertical[usable])
-            lost = Counter(names[code] for code in why[start:stop].tolist() if code < len(lacking))
+            counts = np.bincount(why[start:stop], minlength=len(names)).tolist()[: len(lacking)]
+            lost = {name: count for name, count in zip(lacking, counts, strict=True) if count}
             if usable.size > order.size:
                 lost[names[-1]] = usable.size - order.size
             self._account(index, int(stop - start), order.size, lost, sorted_=sorted_)
@@ -375,7 +367,7 @@ class _Levels:
         self.columns = {name: column[self.level] for name, column in columns.items()}
         self.row_size = np.array([rows.size for rows in kept], dtype=np.int64)
 
-    def _account(self, index: int, total: int, kept: int, lost: Counter[str], *, sorted_: bool) -> None:
+    def _account(self, index: int, total: int, kept: int, lost: dict[str, int], *, sorted_: bool) -> None:
         """Say which levels were left out, or that too few remain."""
         if self.reasons[index]:
             return
@@ -395,15 +387,25 @@ class _Levels:
     def place(self) -> None:
         """Give every level its depth, and each cast that begins near the surface a level at the surface."""
         columns = self.columns
-        from_pressure = self._spread(self.by_pressure)
-        if from_pressure.any():
-            direct = self._spread(self.direct)
+        from_pressure = self.spread(self.by_pressure)
+        if self.equation.name == "teos10" and from_pressure.all() and not self.direct.any():
+            # The usual case, in which depth and speed share what costs most.
+            columns["depth"], columns["teos10"] = depth_and_speed_of_columns(
+                columns["pressure"],
+                columns["temperature"],
+                columns["salinity"],
+                latitude=self.spread(self.block.latitude),
+                longitude=self.spread(self.block.longitude),
+                row_size=self.row_size,
+            )
+        elif from_pressure.any():
+            direct = self.spread(self.direct)
             columns["depth"][from_pressure] = depth_from_density(
                 columns["pressure"][from_pressure],
                 np.where(direct, np.nan, columns["temperature"])[from_pressure],
                 np.where(direct, np.nan, columns["salinity"])[from_pressure],
-                latitude=self._spread(self.block.latitude)[from_pressure],
-                longitude=self._spread(self.block.longitude)[from_pressure],
+                latitude=self.spread(self.block.latitude)[from_pressure],
+                longitude=self.spread(self.block.longitude)[from_pressure],
                 row_size=self.row_size[self.by_pressure],
             )
         filled = np.flatnonzero(self.row_size)
@@ -426,58 +428,49 @@ class _Levels:
         self.row_size = self.row_size.copy()
         self.row_size[filled[raised]] += 1
 
-    def _speed(self, *, temperature: float = 0.0, salinity: float | Floats = 0.0, vertical: float = 0.0) -> Floats:
-        """Speed by the equation, with the inputs moved by so much."""
+    def moved(
+        self,
+        *,
+        temperature: float = 0.0,
+        salinity: float = 0.0,
+        conductivity: float = 0.0,
+        vertical: float = 0.0,
+        rows: NDArray[np.int64] | slice = _ALL,
+    ) -> Floats:
+        """Speed by the equation with what was measured moved by so much; salinity follows where it was computed."""
         name = "depth" if self.equation.vertical == "depth" else "pressure"
         columns = self.columns
+        salt = columns["salinity"] + salinity
+        if self.from_conductivity.any() and (temperature or conductivity or vertical):
+            change = (
+                self._salinity(temperature=temperature, conductivity=conductivity, vertical=vertical) - self._salinity()
+            )
+            salt = np.where(self.spread(self.from_conductivity), salt + change, salt)
         return speed_of_columns(
-            columns["temperature"] + temperature,
-            columns["salinity"] + salinity,
-            latitude=self._spread(self.block.latitude),
-            longitude=self._spread(self.block.longitude),
+            columns["temperature"][rows] + temperature,
+            salt[rows],
+            latitude=self.spread(self.block.latitude)[rows],
+            longitude=self.spread(self.block.longitude)[rows],
             equation=self.equation,
-            **{name: columns[name] + vertical},
+            **{name: columns[name][rows] + vertical},
         )
 
     def speeds(self) -> Floats:
         """Speed on every level."""
-        direct = self._spread(self.direct)
+        known = self.columns.pop("teos10", None)
+        if known is not None:
+            added = np.flatnonzero(self.level < 0)
+            known[added] = self.moved(rows=added)
+            return known
+        direct = self.spread(self.direct)
         if direct.all():
             return self.columns["sound_speed"]
-        return np.where(direct, self.columns["sound_speed"], self._speed())
+        return np.where(direct, self.columns["sound_speed"], self.moved())
 
-    def uncertainties(self, speed: Floats, accuracy: Accuracy) -> Floats:
-        """Standard uncertainty on every level: equation and measurements, root of the sum of squares."""
-        direct = self._spread(self.direct)
-        of_direct = np.nan if accuracy.sound_speed is None else accuracy.sound_speed
-        for index in np.flatnonzero(self.direct & (self.row_size > 0)).tolist():
-            if accuracy.sound_speed is None:
-                self.notes[index].append("no uncertainty: that of the measured sound speed was not given")
-        if direct.all():
-            return np.full(speed.shape, of_direct)
-        standard_error = self.equation.standard_error
-        if standard_error is None:
-            computed = np.full(speed.shape, np.nan)
-        else:
-            dry = self._spread(self.dry)
-            measured = SALINITY_UNCERTAINTY if accuracy.salinity is None else accuracy.salinity
-            assumed = ASSUMED_SALINITY_UNCERTAINTY if accuracy.salinity is None else accuracy.salinity
-            # Each input moved by its own uncertainty: the slope over just the step that matters.
-            shifts = (
-                self._speed(temperature=accuracy.temperature),
-                self._speed(salinity=np.where(dry, assumed, measured)),
-                self._speed(vertical=accuracy.pressure),
-            )
-            computed = np.sqrt(standard_error**2 + sum((shift - speed) ** 2 for shift in shifts))
-        computed = np.where(self._outside(), np.nan, computed)
-        self._tell_basis(accuracy)
-        uncertainty: Floats = np.where(direct, of_direct, computed)
-        return uncertainty
-
-    def _outside(self) -> NDArray[np.bool_]:
+    def outside(self) -> NDArray[np.bool_]:
         """Which levels lie outside the range of the equation; a line to each cast that has some."""
         name = "depth" if self.equation.vertical == "depth" else "pressure"
-        computed = ~self._spread(self.direct)
+        computed = ~self.spread(self.direct)
         inputs = {key: np.where(computed, self.columns[key], np.nan) for key in ("temperature", "salinity", name)}
         outside: NDArray[np.bool_] = range_report(self.equation, **inputs).outside & computed
         if outside.any():
@@ -490,16 +483,29 @@ class _Levels:
                 ).notes
         return outside
 
-    def _tell_basis(self, accuracy: Accuracy) -> None:
-        """Say to each computed cast what its uncertainty is made of."""
-        equation = self.equation
-        for index in np.flatnonzero(~self.direct & (self.row_size > 0)).tolist():
+    def tell_basis(self, accuracies: Sequence[Accuracy]) -> None:
+        """Say to each cast what its uncertainty is made of."""
+        equation, stated = self.equation, self.block.uncertainties
+        for index in np.flatnonzero(self.row_size > 0).tolist():
+            accuracy, notes = accuracies[index], self.notes[index]
+            if self.direct[index]:
+                rows = slice(self.block.starts[index], self.block.starts[index + 1])
+                own = "sound_speed" in stated and np.isfinite(stated["sound_speed"][rows]).any()
+                if accuracy.sound_speed is None and not own:
+                    notes.append("no uncertainty: that of the measured sound speed was not given")
+                continue
             if equation.standard_error is None:
-                self.notes[index].append(f"no uncertainty: no standard error of {equation.name} is known")
+                notes.append(f"no uncertainty: no standard error of {equation.name} is known")
                 continue
             usual = ASSUMED_SALINITY_UNCERTAINTY if self.dry[index] else SALINITY_UNCERTAINTY
             salinity = usual if accuracy.salinity is None else accuracy.salinity
-            self.notes[index].append(
+            salt = f"{salinity:g} of salinity"
+            if self.from_conductivity[index] and accuracy.conductivity is not None:
+                salt = f"{accuracy.conductivity:g} S/m"
+            vertical = PRESSURE_UNCERTAINTY if accuracy.pressure is None else accuracy.pressure
+            unit = "dbar" if self.by_pressure[index] else "m"
+            share = f" or {100.0 * accuracy.pressure_fraction:g} % if greater" if accuracy.pressure_fraction else ""
+            notes.append(
                 f"uncertainty (k = 1) from {equation.standard_error:g} m/s of {equation.name}, "
-                f"{accuracy.temperature:g} degC, {salinity:g} of salinity and {accuracy.pressure:g} dbar"
+                f"{accuracy.temperature:g} degC, {salt} and {vertical:g} {unit}{share}"
             )

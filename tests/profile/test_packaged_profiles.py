@@ -63,7 +63,7 @@ def test_munk_is_read_to_the_last_bit():
     assert profile.features().axis_depth == 1300.0
 
 
-@pytest.mark.parametrize("name", INVENTED)
+@pytest.mark.parametrize("name", [*INVENTED, "ostray_edge_later"])
 def test_invented_casts_say_so_and_are_stable(name):
     path = packaged_profile(name)
     assert path.read_text(encoding="utf-8").startswith("# data: INVENTED")

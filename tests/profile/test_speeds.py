@@ -10,9 +10,8 @@ from hypothesis import strategies as st
 
 from ocean_sound.casts import Cast, CastBlock
 from ocean_sound.errors import InputError
-from ocean_sound.profile import Profile
+from ocean_sound.profile import Accuracy, Profile, speeds_of_block
 from ocean_sound.profile.ordering import downward
-from ocean_sound.profile.speeds import Accuracy, speeds_of_block
 from ocean_sound.water import conductivity_from_salinity, sound_speed
 
 PRESSURE = np.array([0.0, 10.0, 50.0, 100.0, 500.0, 1000.0, 2000.0])
@@ -106,22 +105,23 @@ class TestNumbers:
 
 class TestUncertainty:
     def test_is_the_root_sum_square_of_the_shares(self):
-        # At 15 degC, 35.1 and 0 dbar: dc/dT about 3.2 m/s per degC, dc/dS 1.2 m/s, dc/dp 0.0166 m/s per dbar (gsw).
+        # By central differences of gsw. The pressure is of no account by itself: it puts the water of 0 and of 10 dbar
+        # at the wrong depth, so its share is the change of speed with that water, at one pressure, over 3 dbar.
         profile = Profile.from_cast(
             make_cast(), temperature_uncertainty=0.1, salinity_uncertainty=0.2, pressure_uncertainty=3.0
         )
         sa = gsw.SA_from_SP(35.1, 0.0, -20.0, 50.0)
-        slopes = [
-            (gsw.sound_speed_t_exact(sa, 15.0 + d, 0.0) - gsw.sound_speed_t_exact(sa, 15.0 - d, 0.0)) / (2 * d)
-            for d in [1e-3]
-        ]
-        slopes.append((gsw.sound_speed_t_exact(sa + 0.01, 15.0, 0.0) - gsw.sound_speed_t_exact(sa, 15.0, 0.0)) / 0.01)
-        slopes.append((gsw.sound_speed_t_exact(sa, 15.0, 1.0) - gsw.sound_speed_t_exact(sa, 15.0, 0.0)) / 1.0)
-        shares = np.array(slopes) * [0.1, 0.2 * 35.16504 / 35.0, 3.0]
+        step = 1e-3
+        by_t = (gsw.sound_speed_t_exact(sa, 15.0 + step, 0.0) - gsw.sound_speed_t_exact(sa, 15.0 - step, 0.0)) / (
+            2 * step
+        )
+        by_s = (gsw.sound_speed_t_exact(sa + 0.01, 15.0, 0.0) - gsw.sound_speed_t_exact(sa, 15.0, 0.0)) / 0.01
+        water = (gsw.sound_speed_t_exact(sa, 14.8, 0.0) - gsw.sound_speed_t_exact(sa, 15.0, 0.0)) / 10.0
+        shares = np.array([by_t * 0.1, by_s * 0.2 * 35.16504 / 35.0, water * 3.0])
         from ocean_sound.water import equations
 
         expected = np.sqrt(equations()["teos10"].standard_error ** 2 + np.sum(shares**2))
-        assert profile.uncertainty[0] == pytest.approx(expected, rel=0.02)
+        assert profile.uncertainty[0] == pytest.approx(expected, rel=0.005)
 
     def test_defaults_are_told(self):
         assert noted(Profile.from_cast(make_cast()), "0.002 degC, 0.01 of salinity and 2.4 dbar")
@@ -145,7 +145,7 @@ class TestUncertainty:
         assert np.array_equal(assumed.speed, measured.speed)
         assert noted(assumed, "salinity assumed: 35")
         assert np.all(assumed.uncertainty > 1.0)
-        assert np.all(measured.uncertainty < 0.1)
+        assert np.all(measured.uncertainty < 0.2)
 
     @pytest.mark.parametrize("name", ["temperature", "salinity", "pressure", "sound_speed"])
     def test_negative_is_refused(self, name):
@@ -351,4 +351,4 @@ class TestBlock:
         assert block.values["sound_speed"][back[back >= 0]].tolist() == [1500.0, 1490.0]
 
     def test_accuracy_defaults(self):
-        assert Accuracy() == Accuracy(0.002, None, 2.4, None)
+        assert Accuracy() == Accuracy(0.002, None, None, None)

@@ -1,0 +1,27 @@
+"""How shapes and noise add up."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+    from numpy.typing import NDArray
+
+    Floats = NDArray[np.float64]
+
+
+def total(shapes: Mapping[str, Floats], noise: Floats | None) -> Floats:
+    """Root of the sum of squares of all shapes and the noise.
+
+    >>> total({"a": np.array([3.0])}, np.array([4.0])).tolist()
+    [5.0]
+    """
+    squares = [shape**2 for shape in shapes.values()]
+    if noise is not None:
+        squares.append(noise**2)
+    found: Floats = np.sqrt(np.sum(squares, axis=0))
+    return found
