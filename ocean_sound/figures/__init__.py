@@ -5,8 +5,20 @@ Nothing here touches matplotlib's global state; a figure goes to a file by `save
 
 from __future__ import annotations
 
+from .archive import archive_figure
+from .cast_sheet import cast_sheet_figure
+from .comparison import comparison_figure
 from .fan import fan_figure
 from .profile import profile_figure
 from .saving import check_picture, figure_format, save_figure
 
-__all__ = ["check_picture", "fan_figure", "figure_format", "profile_figure", "save_figure"]
+__all__ = [
+    "archive_figure",
+    "cast_sheet_figure",
+    "check_picture",
+    "comparison_figure",
+    "fan_figure",
+    "figure_format",
+    "profile_figure",
+    "save_figure",
+]
