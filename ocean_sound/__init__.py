@@ -32,9 +32,24 @@ _NAMES = {
         "wave_number",
         "period",
     ),
-    "casts": ("Cast", "CastBlock", "read_casts", "read_blocks"),
-    "profile": ("Profile", "Features"),
+    "casts": (
+        "Cast",
+        "CastBlock",
+        "read_casts",
+        "read_blocks",
+        "read_many",
+        "check_cast",
+        "check_block",
+        "complete_cast",
+        "read_thresholds",
+        "read_verdicts",
+        "apply_verdicts",
+    ),
+    "grids": ("open_climatology", "open_bathymetry"),
+    "profile": ("Profile", "Features", "Accuracy"),
     "rays": ("trace", "shadow_zones"),
+    "soundings": ("compare", "thin", "hand_over", "bin_levels", "smooth", "beam_positions"),
+    "archive": ("build_archive", "open_archive"),
 }
 _HOMES = {name: home for home, names in _NAMES.items() for name in names}
 

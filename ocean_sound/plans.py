@@ -9,7 +9,7 @@ from __future__ import annotations
 import difflib
 import tomllib
 from pathlib import Path
-from typing import Any
+from typing import Any, Literal
 
 from pydantic import BaseModel, ConfigDict, Field, ValidationError
 
@@ -27,6 +27,7 @@ class Water(_Table):
     cast: str | None = None
     equation: str = "teos10"
     salinity: float | None = Field(default=None, ge=0, le=50)
+    instrument: Literal["float", "ctd", "xbt"] | None = None
     columns: dict[str, str] = Field(default_factory=dict)
 
 
@@ -144,6 +145,7 @@ _KINDS = {
     str: "a text",
     str | None: "a text",
     bool: "true or false",
+    Literal["float", "ctd", "xbt"] | None: "'float', 'ctd' or 'xbt'",
     dict[str, str]: "a table of names and column headers",
 }
 

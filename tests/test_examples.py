@@ -22,7 +22,15 @@ def test_scripts(script, tmp_path):
     assert done.stderr == ""
 
 
-@pytest.mark.parametrize("plan", sorted(FOLDER.glob("*.toml")), ids=lambda path: path.stem)
+def test_the_template(tmp_path):
+    cast = TOP / "profiles" / "invented" / "ostray_edge.csv"
+    output = tmp_path / "levels.txt"
+    arguments = ["cast", cast, "--thin", 0.02, "--template", FOLDER / "sounder.toml", "-o", output]
+    assert run([str(argument) for argument in arguments]) == 0
+    assert output.read_bytes().count(b"\r\n") > 3
+
+
+@pytest.mark.parametrize("plan", sorted(FOLDER.glob("ostray*.toml")), ids=lambda path: path.stem)
 def test_plans(plan, capsys):
     assert run(["rays", str(plan)]) == 0
     assert "rays to" in capsys.readouterr().out

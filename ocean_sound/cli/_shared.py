@@ -4,7 +4,8 @@ from __future__ import annotations
 
 import json
 import math
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
+from contextlib import contextmanager
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -15,6 +16,8 @@ from ..errors import InputError
 if TYPE_CHECKING:
     from ..casts import Cast
     from ..profile import Profile
+
+FILE = click.Path(path_type=Path)
 
 Decorator = Callable[[Callable[..., Any]], Callable[..., Any]]
 
@@ -46,17 +49,21 @@ map_option = click.option(
 cast_option = click.option(
     "--cast", "which", metavar="ID", help="Which cast of a file with several: its id, or its number from 1."
 )
+instrument_option = click.option(
+    "--instrument",
+    type=click.Choice(["float", "ctd", "xbt"]),
+    help="Whose stated accuracy to take for the uncertainty; else float's, or xbt's where the cast says so.",
+)
 salinity_option = click.option(
     "--salinity", type=float, help="Salinity to assume for a cast without one (practical salinity)."
 )
 
 
 def options(*decorators: Decorator) -> Decorator:
-    """Stack options so that the help shows them in the order given; `--debug` joins each command."""
+    """Stack options so that the help shows them in the order given."""
 
     def decorate(function: Callable[..., Any]) -> Callable[..., Any]:
-        chain: tuple[Decorator, ...] = (*decorators, debug_option)
-        for decorator in reversed(chain):
+        for decorator in reversed(decorators):
             function = decorator(function)
         return function
 
@@ -116,22 +123,37 @@ def pick(casts: Sequence[Cast], path: Path, which: str | None) -> Cast:
     raise InputError(f"{path}: holds {len(casts)} casts: {asked}, by id ({listed}) or by number from 1")
 
 
-def profile_of(cast: Cast, path: Path, *, equation: str, salinity: float | None) -> Profile:
-    """The sound-speed profile of a cast; what is wrong with the cast is said of its file."""
-    from ..profile import Profile
-
+@contextmanager
+def about(path: Path) -> Iterator[None]:
+    """What is wrong with a cast is said of its file."""
     try:
-        return Profile.from_cast(cast, equation=equation, salinity=salinity)
+        yield
     except InputError as error:
         raise InputError(f"{path}: {error}") from None
 
 
+def profile_of(
+    cast: Cast, path: Path, *, equation: str, salinity: float | None, instrument: str | None = None
+) -> Profile:
+    """The sound-speed profile of a cast."""
+    from ..profile import Profile
+
+    with about(path):
+        return Profile.from_cast(cast, equation=equation, salinity=salinity, accuracy=instrument)
+
+
 def profile_in(
-    path: Path, *, which: str | None, mapping: Sequence[str], equation: str, salinity: float | None
+    path: Path,
+    *,
+    which: str | None,
+    mapping: Sequence[str],
+    equation: str,
+    salinity: float | None,
+    instrument: str | None = None,
 ) -> Profile:
     """The sound-speed profile of one cast in a file."""
     cast = pick(read_all(path, mapping), path, which)
-    return profile_of(cast, path, equation=equation, salinity=salinity)
+    return profile_of(cast, path, equation=equation, salinity=salinity, instrument=instrument)
 
 
 def plain(value: Any) -> Any:

@@ -21,6 +21,7 @@ from . import _shared as shared
     ),
     shared.replace_option,
     shared.json_option,
+    shared.debug_option,
 )
 def command(output: Path, replace: bool, as_json: bool) -> None:
     """Run the whole of it: casts to profiles, rays, shadow zones and figures, in a folder of results.

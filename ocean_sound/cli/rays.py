@@ -21,7 +21,7 @@ FIGURE_POINTS = 1001
 
 _PHYSICS = (
     "source_depth", "max_range", "angles", "number", "seabed_depth", "max_surface_bounces", "max_seabed_bounces",
-    "with_shadow", "points", "which", "mapping", "equation", "salinity",
+    "with_shadow", "points", "which", "mapping", "equation", "salinity", "instrument",
 )  # fmt: skip
 
 
@@ -73,10 +73,12 @@ class _Asked:
     shared.map_option,
     shared.equation_option,
     shared.salinity_option,
+    shared.instrument_option,
     shared.output_option,
     shared.figure_option,
     shared.replace_option,
     shared.json_option,
+    shared.debug_option,
 )
 @click.pass_context
 def command(
@@ -148,6 +150,7 @@ def _from_plan(path: Path) -> _Asked:
             mapping=[f"{name}={column}" for name, column in plan.water.columns.items()],
             equation=plan.water.equation,
             salinity=plan.water.salinity,
+            instrument=plan.water.instrument,
         ),
         source={
             "source_depth": plan.source.depth,
@@ -180,6 +183,7 @@ def _from_options(path: Path, physics: dict[str, Any]) -> _Asked:
             mapping=physics["mapping"],
             equation=physics["equation"],
             salinity=physics["salinity"],
+            instrument=physics["instrument"],
         ),
         source={name: physics[name] for name in ("source_depth", "max_range", "seabed_depth")},
         angles=even_angles(lowest, highest, physics["number"]),

@@ -88,6 +88,7 @@ def _number(name: str, text: str) -> Any:
     shared.output_option,
     shared.replace_option,
     shared.json_option,
+    shared.debug_option,
 )
 def command(
     states: Path | None,

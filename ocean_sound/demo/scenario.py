@@ -9,12 +9,13 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from ..casts import read_casts
+from ..casts import CastBlock, check_block, read_casts
 from ..errors import OutputError
-from ..figures import fan_figure, profile_figure, save_figure
+from ..figures import cast_sheet_figure, comparison_figure, fan_figure, profile_figure, save_figure
 from ..files import packaged_profile, write_csv, write_dataset, write_text
 from ..profile import Profile
 from ..rays import even_angles, find_shadow, trace_fan
+from ..soundings import compare, thin
 from ..water import equations, range_report, speed_of_columns
 from .words import CAUTIONS, NEXT, TITLE
 
@@ -22,16 +23,19 @@ if TYPE_CHECKING:
     from collections.abc import Callable, Iterator
     from pathlib import Path
 
-    from ..casts import Cast
+    from ..casts import Cast, CheckReport
 
 # A folder with this file in it is the demonstration's own, and may be written over.
 MARKER = "SUMMARY.txt"
 
-EDGE, DEEP, REAL = "invented/ostray_edge.csv", "invented/ostray_deep.csv", "observed/gsw_check_cast_1.csv"
+EDGE, LATER = "invented/ostray_edge.csv", "invented/ostray_edge_later.csv"
+DEEP, REAL = "invented/ostray_deep.csv", "observed/gsw_check_cast_1.csv"
 INVENTED = "invented data"
 CREDIT = "real cast from the gsw package (SCOR/IAPSO WG127, BSD-3-Clause)"
 # The echo sounder of the invented survey: its depth, and angles from the vertical across its swath.
 SOUNDER_DEPTH, SWATH = 4.0, (0.0, 30.0, 45.0, 60.0, 65.0)
+# How far a beam may move when a profile is thinned, m.
+TOLERANCE = 0.005
 SOURCE_DEPTH, DEEP_RANGE = 100.0, 80_000.0
 
 
@@ -66,11 +70,12 @@ def run_demo(folder: Path, *, replace: bool = False, progress: Callable[[str], N
     parts = []
     for told, part in (
         (
-            "1 of 3: a shelf-edge cast and the beams of an echo sounder (the first run compiles kernels: some seconds)",
+            "1 of 4: a shelf-edge cast, checked, and its beams (the first run compiles kernels: some seconds)",
             _shelf_edge,
         ),
-        ("2 of 3: a moored source in deep water, its rays and shadow zones", _deep_water),
-        ("3 of 3: a real open cast under every equation", _real_cast),
+        ("2 of 4: the same place later, and what that does to soundings", _hours_later),
+        ("3 of 4: a moored source in deep water, its rays and shadow zones", _deep_water),
+        ("4 of 4: a real open cast under every equation", _real_cast),
     ):
         progress(told)
         parts.append("\n".join(part(folder)))
@@ -86,15 +91,21 @@ def _cast(name: str) -> Cast:
 def _shelf_edge(folder: Path) -> Iterator[str]:
     """Profile, features, and what refraction does to the outer beams of an echo sounder."""
     cast = _cast(EDGE)
-    profile = Profile.from_cast(cast)
+    block, report = check_block(CastBlock.from_casts([cast]), thresholds="coast")
+    profile = Profile.from_cast(block[0], accuracy="ctd")
     features = profile.features()
+    thinned = thin(profile, tolerance=TOLERANCE, transducer_depth=SOUNDER_DEPTH)
     write_dataset(profile.to_dataset(), folder / "shelf-edge-profile.nc", replace=True)
     write_csv(folder / "shelf-edge-profile.csv", profile.columns(), preamble=profile.about(), replace=True)
-    picture = profile_figure(profile, features, remark=INVENTED)
-    save_figure(picture, folder / "shelf-edge-profile.png", replace=True)
+    picture = cast_sheet_figure(block[0], profile, features, report, remark=INVENTED)
+    save_figure(picture, folder / "shelf-edge-cast.png", replace=True)
     yield "1. Shelf edge, for a survey hydrographer (invented cast)"
     yield f"   {cast.id}: {len(cast)} levels to {profile.depth[-1]:.0f} m, sound speed by TEOS-10"
     yield f"   mixed layer to {features.sonic_layer_depth:.0f} m; steepest gradient {features.steepest_gradient:.2f} /s"
+    yield f"   checked by {len(report.levels)} tests of levels: {_verdict(report)}"
+    shift = thinned.guarantee
+    yield f"   {len(thinned.profile)} of its levels would do: no beam within {shift.max_angle:.0f} degrees then"
+    yield f"   moves by more than {1000 * shift.distance:.1f} mm anywhere in the water"
     yield f"   mean speed {features.mean_speed:.2f} m/s, harmonic mean {features.harmonic_mean_speed:.2f} m/s"
     yield "   Beams to the seabed, traced through the profile, and how far off a straight line is that takes the speed"
     yield "   at the sounder all the way (same angle, same time):"
@@ -120,6 +131,29 @@ def _shelf_edge(folder: Path) -> Iterator[str]:
         yield f"     {angle:15.0f} °   {depth:7.2f}   {across:8.2f}   {wrong_depth:+11.2f}   {wrong_across:+12.2f}"
 
 
+def _verdict(report: CheckReport) -> str:
+    """How many values failed or are suspect, over all tests of levels."""
+    counts = [count for by_name in report.counts().values() for count in by_name.values()]
+    failed, suspect = (sum(count.get(word, 0) for count in counts) for word in ("fail", "suspect"))
+    return f"{failed} values failed, {suspect} suspect"
+
+
+def _hours_later(folder: Path) -> Iterator[str]:
+    """What a change of the water does to soundings corrected with the earlier cast."""
+    found = compare(_cast(EDGE), _cast(LATER), angles=[0.0, 45.0, 65.0], transducer_depth=SOUNDER_DEPTH)
+    write_dataset(found, folder / "shelf-edge-later.nc", replace=True)
+    save_figure(comparison_figure(found, remark=INVENTED), folder / "shelf-edge-later.png", replace=True)
+    deepest = found.isel(sounding_depth=-1)
+    yield "2. The same place eight hours later (invented cast)"
+    most = float(abs(found.speed_difference).max())
+    yield f"   speed differs by up to {most:.1f} m/s where the thermocline has moved"
+    yield f"   soundings at {float(deepest.sounding_depth):.0f} m corrected with the earlier cast are wrong by:"
+    yield "     from the vertical   depth m   across m"
+    for angle in found.angle.values:
+        beam = deepest.sel(angle=angle)
+        yield f"     {angle:15.0f} °   {float(beam.depth_error):+7.2f}   {float(beam.across_track_error):+8.2f}"
+
+
 def _deep_water(folder: Path) -> Iterator[str]:
     """Rays and shadow zones of a moored source."""
     profile = Profile.from_cast(_cast(DEEP))
@@ -138,7 +172,7 @@ def _deep_water(folder: Path) -> Iterator[str]:
     save_figure(profile_figure(profile, features, remark=INVENTED), folder / "deep-water-profile.png", replace=True)
     save_figure(fan_figure(fan, shadow=shadow, remark=INVENTED), folder / "deep-water-rays.png", replace=True)
     share = shadow.summary()
-    yield "2. Deep water, for someone placing a source or receiver (invented cast)"
+    yield "3. Deep water, for someone placing a source or receiver (invented cast)"
     yield f"   axis of the deep channel at {features.axis_depth:.0f} m, critical depth {features.critical_depth:.0f} m"
     yield f"   source at {SOURCE_DEPTH:.0f} m, {len(fan)} rays to {DEEP_RANGE / 1000:.0f} km: " + "; ".join(
         f"{count} {name.replace('_', ' ')}" for name, count in fan.status_counts().items()
@@ -153,7 +187,7 @@ def _real_cast(folder: Path) -> Iterator[str]:
     profile = Profile.from_cast(cast)
     picture = profile_figure(profile, profile.features(), remark=CREDIT)
     save_figure(picture, folder / "real-cast-profile.png", replace=True)
-    yield "3. A real open cast, for whoever must defend a speed"
+    yield "4. A real open cast, for whoever must defend a speed"
     yield f"   {CREDIT}"
     yield f"   {cast.id}, at {cast.latitude:g}, {cast.longitude:g}: {len(cast)} levels to {profile.depth[-1]:.0f} m"
     yield "   Each equation less TEOS-10, over the levels within the range of the equation:"

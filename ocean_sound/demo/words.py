@@ -2,16 +2,18 @@
 
 TITLE = """\
 OCEAN_SOUND DEMONSTRATION
-The survey from Ostray Firth to Ostray Deep is invented, places and data alike. The cast of part 3 is real."""
+The survey from Ostray Firth to Ostray Deep is invented, places and data alike. The cast of part 4 is real."""
 
 NEXT = """\
 What to look at next
-   shelf-edge-profile.png     the profile with its layer, gradient and uncertainty
+   shelf-edge-cast.png        the cast with its flags, its speed, layer, gradient and uncertainty
+   shelf-edge-later.png       what eight hours did to the water, and to soundings
    deep-water-rays.png        rays and shadow of a source at 100 m
    real-cast-profile.png      a real cast; real-cast-equations.csv: its speed by every equation
    deep-water-rays.nc         the same rays and shadow as CF netCDF (xarray opens it)
 Then your own:
-   ocean-sound cast YOUR-CAST.csv --figure profile.png
+   ocean-sound cast YOUR-CAST.csv --check --figure sheet.png
+   ocean-sound cast YOUR-CAST.csv --compare ANOTHER.csv --figure comparison.png
    ocean-sound rays YOUR-CAST.csv --source-depth 30 --max-range 10000 --shadow --figure rays.png
    ocean-sound speed --temperature 10 --salinity 35 --depth 100 --latitude 45"""
 
