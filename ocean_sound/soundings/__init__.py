@@ -7,17 +7,20 @@ from .beams import STATUSES, Beams, beam_positions, beam_times
 from .comparing import compare, refraction_errors
 from .handing_over import hand_over, to_exactly
 from .shift import Shift, largest_shift
+from .table import BeamTable, beam_table
 from .template import Template, read_template
 from .thinning import Thinned, thin
 
 __all__ = [
     "STATUSES",
     "Averaged",
+    "BeamTable",
     "Beams",
     "Shift",
     "Template",
     "Thinned",
     "beam_positions",
+    "beam_table",
     "beam_times",
     "bin_levels",
     "compare",
