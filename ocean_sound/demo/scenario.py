@@ -9,10 +9,11 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from ..archive import build_archive, open_archive
 from ..casts import CastBlock, check_block, read_casts
 from ..errors import OutputError
-from ..figures import cast_sheet_figure, comparison_figure, fan_figure, profile_figure, save_figure
-from ..files import packaged_profile, write_csv, write_dataset, write_text
+from ..figures import archive_figure, cast_sheet_figure, comparison_figure, fan_figure, profile_figure, save_figure
+from ..files import packaged_profile, packaged_profiles, write_csv, write_dataset, write_text
 from ..profile import Profile
 from ..rays import even_angles, find_shadow, trace_fan
 from ..soundings import compare, thin
@@ -70,12 +71,13 @@ def run_demo(folder: Path, *, replace: bool = False, progress: Callable[[str], N
     parts = []
     for told, part in (
         (
-            "1 of 4: a shelf-edge cast, checked, and its beams (the first run compiles kernels: some seconds)",
+            "1 of 5: a shelf-edge cast, checked, and its beams (the first run compiles kernels: some seconds)",
             _shelf_edge,
         ),
-        ("2 of 4: the same place later, and what that does to soundings", _hours_later),
-        ("3 of 4: a moored source in deep water, its rays and shadow zones", _deep_water),
-        ("4 of 4: a real open cast under every equation", _real_cast),
+        ("2 of 5: the same place later, and what that does to soundings", _hours_later),
+        ("3 of 5: a moored source in deep water, its rays and shadow zones", _deep_water),
+        ("4 of 5: a real open cast under every equation", _real_cast),
+        ("5 of 5: an archive of all casts that come with the package", _all_casts),
     ):
         progress(told)
         parts.append("\n".join(part(folder)))
@@ -205,3 +207,18 @@ def _real_cast(folder: Path) -> Iterator[str]:
         largest = off[np.argmax(np.abs(off))]
         yield f"     {name:<20} {inside.sum():6d}   {off.mean():+8.3f}   {largest:+11.3f}"
     write_csv(folder / "real-cast-equations.csv", columns, replace=True)
+
+
+def _all_casts(folder: Path) -> Iterator[str]:
+    """One CF netCDF archive of every cast that comes with the package."""
+    output = folder / "archive.nc"
+    paths = [packaged_profile(name) for name in packaged_profiles()]
+    built = build_archive(
+        paths, output, workers=0, replace=True, title="Casts that come with ocean_sound, some invented"
+    )
+    with open_archive(output) as archive:
+        save_figure(archive_figure(archive), folder / "archive.png", replace=True)
+    yield "5. An archive, for someone filing casts (invented and real casts together)"
+    yield f"   {built.casts} casts with {built.levels} levels from {built.files} files in one CF netCDF file;"
+    counts = f"left out: {len(built.left_out)}, without a speed: {built.without_speed}"
+    yield f"   {counts}, repeated: {len(built.duplicates)}"

@@ -11,10 +11,12 @@ What to look at next
    deep-water-rays.png        rays and shadow of a source at 100 m
    real-cast-profile.png      a real cast; real-cast-equations.csv: its speed by every equation
    deep-water-rays.nc         the same rays and shadow as CF netCDF (xarray opens it)
+   archive.nc, archive.png    all casts that come with the package in one file
 Then your own:
    ocean-sound cast YOUR-CAST.csv --check --figure sheet.png
    ocean-sound cast YOUR-CAST.csv --compare ANOTHER.csv --figure comparison.png
    ocean-sound rays YOUR-CAST.csv --source-depth 30 --max-range 10000 --shadow --figure rays.png
+   ocean-sound archive build FOLDER-OF-CASTS -o archive.nc
    ocean-sound speed --temperature 10 --salinity 35 --depth 100 --latitude 45"""
 
 CAUTIONS = """\
