@@ -62,6 +62,8 @@ class Dense:
         return self._laid(values, dimensions, self.instance)
 
     def _laid(self, values: NDArray[Any], dimensions: tuple[str, ...], target: tuple[str, ...]) -> NDArray[Any] | None:
+        if dimensions == target and values.shape == tuple(self.sizes[name] for name in target):
+            return values.reshape(-1)  # as nearly all are
         named = [(name, size) for name, size in zip(dimensions, values.shape, strict=True)]
         kept = [name for name, size in named if name in target]
         if any(name not in target and size != 1 for name, size in named) or len(set(kept)) != len(kept):

@@ -261,8 +261,8 @@ def _add_flags(
             )
         flags = own if flags is None else worst(flags, own)
     if ours == "temperature":
-        sentinel = np.isin(values, _NO_WATER)
-        if sentinel.any():
+        sentinel = values >= _NO_WATER[0]  # a quick look
+        if sentinel.any() and (sentinel := np.isin(values, _NO_WATER)).any():
             flags = np.full(values.shape, NOT_EVALUATED, np.int8) if flags is None else flags
             flags = np.where(sentinel, FAIL, flags).astype(np.int8)
             count = int(sentinel.sum())

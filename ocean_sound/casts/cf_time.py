@@ -74,18 +74,11 @@ def times_since(values: NDArray[np.float64], units: str, calendar: str) -> NDArr
     >>> times_since(np.array([1.5, np.nan]), "days since 1950-01-01 00:00:00 UTC", "")
     array(['1950-01-02T12:00:00.000000000', 'NaT'], dtype='datetime64[ns]')
     """
-    match = _UNITS.match(units)
-    step = _SECONDS.get(match[1].lower()) if match else None
-    if match is None or step is None:
-        raise NoTimeError(f"the units of the time are {units[:60]!r}, not a number of days or seconds since a date")
-    kind = calendar.strip().lower() or "standard"
-    if kind not in {"standard", "gregorian", "proleptic_gregorian", "julian"}:
-        raise NoTimeError(f"the calendar of the time, {calendar[:40]!r}, is not that of real days")
-    epoch = _moment(match[2])
-    if kind == "julian" or (kind in {"standard", "gregorian"} and epoch < _REFORM):
-        return _by_calendar(values, units, kind)
+    counted = _counted(units, calendar)
+    if isinstance(counted, str):
+        return _by_calendar(values, units, counted)
+    step, epoch, base = counted
     seconds = values * step
-    base = float((epoch - np.datetime64("1970-01-01", "us")) / np.timedelta64(1, "s"))
     with np.errstate(invalid="ignore"):
         sane = (seconds + base > _EARLIEST) & (seconds + base < _LATEST)
     found = np.full(values.shape, NO_TIME)
@@ -96,6 +89,21 @@ def times_since(values: NDArray[np.float64], units: str, calendar: str) -> NDArr
 
 
 @lru_cache(maxsize=256)
+def _counted(units: str, calendar: str) -> tuple[float, np.datetime64, float] | str:
+    """Seconds in a unit, since when it counts, seconds from 1970 to then; or the calendar, where numpy has it not."""
+    match = _UNITS.match(units)
+    step = _SECONDS.get(match[1].lower()) if match else None
+    if match is None or step is None:
+        raise NoTimeError(f"the units of the time are {units[:60]!r}, not a number of days or seconds since a date")
+    kind = calendar.strip().lower() or "standard"
+    if kind not in {"standard", "gregorian", "proleptic_gregorian", "julian"}:
+        raise NoTimeError(f"the calendar of the time, {calendar[:40]!r}, is not that of real days")
+    epoch = _moment(match[2])
+    if kind == "julian" or (kind in {"standard", "gregorian"} and epoch < _REFORM):
+        return kind
+    return step, epoch, float((epoch - np.datetime64("1970-01-01", "us")) / np.timedelta64(1, "s"))
+
+
 def _moment(text: str) -> np.datetime64:
     match = _MOMENT.match(text)
     if match is None:

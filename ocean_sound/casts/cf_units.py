@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from functools import lru_cache
 from typing import TYPE_CHECKING
 
 from .table import shortened
@@ -47,7 +48,14 @@ def cleaned_unit(variable: Variable, name: str) -> tuple[str | None, float, list
         return _scaled(variable, name, None), 1.0, []
     if variable.text("standard_name") == "sea_water_practical_salinity":
         return "PSS-78", 1.0, []  # the standard name says which salinity, whatever the unit
-    unit, factor, notes = given, 1.0, []
+    unit, factor, notes = _spelt(given, name)
+    return _scaled(variable, name, unit), factor, [*notes]
+
+
+@lru_cache(maxsize=1024)
+def _spelt(given: str, name: str) -> tuple[str, float, tuple[str, ...]]:
+    unit, factor = given, 1.0
+    notes: tuple[str, ...] = ()
     match = _FACTOR.match(unit)
     if match is not None and not is_unit(name, unit):
         factor, unit = float(match[1]), match[2].strip()
@@ -56,9 +64,9 @@ def cleaned_unit(variable: Variable, name: str) -> tuple[str | None, float, list
         repaired = _repaired(unit, name)
         if repaired is not None:
             shown = given.encode("ascii", "backslashreplace").decode()
-            notes.append(f"unit of {name.replace('_', ' ')}, damaged in the file ({shown}), read as {repaired}")
+            notes = (f"unit of {name.replace('_', ' ')}, damaged in the file ({shown}), read as {repaired}",)
             unit = repaired
-    return _scaled(variable, name, unit), factor, notes
+    return unit, factor, notes
 
 
 def _repaired(unit: str, name: str) -> str | None:

@@ -181,8 +181,7 @@ def companions(store: Store, key: str) -> Iterator[Variable]:
     """The flag variables that belong to a variable: those it names, else those with a name that says so."""
     variable = store.variables[key]
     named = [*variable.text("ancillary_variables").replace(",", " ").split(), variable.text("OBS_QC_VARIABLE")]
-    names = dict.fromkeys([*named, *(f"{key}{suffix}" for suffix in _SUFFIXES)])
-    for name in names:
+    for name in dict.fromkeys([*named, *_suffixed(key)]):
         found = store.variables.get(name)
         if found is not None and _is_flag(found, name, key):
             yield found
@@ -196,7 +195,12 @@ def _is_flag(variable: Variable, name: str, key: str) -> bool:
         return False  # standard_error, number_of_observations
     if standard or any(variable.get(about) is not None for about in ("flag_values", "flag_masks", "flag_meanings")):
         return True
-    return name in {f"{key}{suffix}" for suffix in _SUFFIXES} or name == "OBS_QC_VARIABLE"
+    return name in _suffixed(key) or name == "OBS_QC_VARIABLE"
+
+
+@lru_cache(maxsize=4096)
+def _suffixed(key: str) -> tuple[str, ...]:
+    return tuple(f"{key}{suffix}" for suffix in _SUFFIXES)
 
 
 def scheme_of(store: Store, variable: Variable) -> Scheme:

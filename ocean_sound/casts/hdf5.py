@@ -7,7 +7,7 @@ variable names its own through the attribute DIMENSION_LIST. Groups other than t
 from __future__ import annotations
 
 import os
-from functools import cached_property
+from functools import cached_property, lru_cache
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -23,46 +23,72 @@ _ONLY_A_DIMENSION = "This is a netCDF dimension but not a netCDF variable"
 _HIDDEN = {"CLASS", "NAME", "DIMENSION_LIST", "REFERENCE_LIST", "_NCProperties", "_nc3_strict"}
 
 
+@lru_cache(maxsize=256)
+def _number_type(kind: bytes) -> tuple[np.dtype[Any], h5t.TypeID]:
+    """How numbers of a type, as HDF5 encodes it, are held in memory: for numpy, and for HDF5."""
+    found = h5t.decode(kind).dtype
+    return found, h5t.py_create(found)
+
+
+def _held_as(kind: Any) -> tuple[np.dtype[Any], Any]:
+    """The same of any type; h5py finds out itself what HDF5 wants to know where None stands."""
+    if isinstance(kind, h5t.TypeIntegerID | h5t.TypeFloatID):
+        return _number_type(kind.encode())
+    return kind.dtype, None
+
+
 class _Attributes(Owner):
     """Attributes are looked up again and again: what is there is listed once, what is asked for read once."""
 
     def __init__(self, place: Any) -> None:
         self._place = place
         self._read: dict[str, Any] = {}
+        self._texts: dict[str, str] = {}
 
     @cached_property
     def _there(self) -> list[str]:
-        found: list[str] = []
+        found: list[bytes] = []
 
         def note(name: bytes) -> None:
-            found.append(name.decode(errors="replace"))
+            found.append(name)
 
         h5a.iterate(self._place, note)
-        return found
+        return [name.decode(errors="replace") for name in found]
 
     def get(self, name: str) -> Any:
-        if name not in self._there:
-            return None
-        if name not in self._read:
-            self._read[name] = self._value(name)
-        return self._read[name]
+        try:
+            return self._read[name]
+        except KeyError:
+            self._read[name] = found = self._value(name) if name in self._there else None
+        return found
+
+    def text(self, name: str) -> str:
+        try:
+            return self._texts[name]
+        except KeyError:
+            self._texts[name] = found = super().text(name)
+        return found
 
     def _value(self, name: str) -> Any:
         held = h5a.open(self._place, name.encode())
         kind = held.get_type()
-        if isinstance(kind, h5t.TypeStringID) and not kind.is_variable_str():
-            try:
-                size = held.get_storage_size()
-            except RuntimeError:  # a null text has none
-                return ""
-            if size == kind.get_size():  # one text, as the netCDF library writes them: the short way
-                one = np.empty((), f"S{size}")
-                held.read(one, kind)
-                return decoded(one.tobytes()).rstrip("\x00")
+        try:
+            alone = held.get_storage_size() == kind.get_size()
+        except RuntimeError:  # nothing is stored
+            alone = False
+        if alone and isinstance(kind, h5t.TypeStringID) and not kind.is_variable_str():
+            text = np.empty((), f"S{kind.get_size()}")  # one text, as the netCDF library writes them: the short way
+            held.read(text, kind)
+            return decoded(text.tobytes()).rstrip("\x00")
+        dtype, memory = _held_as(kind)
+        if alone and memory is not None:
+            one = np.empty(1, dtype)
+            held.read(one, memory)
+            return one
         if held.get_space().get_simple_extent_type() == h5s.NULL:
             return ""
-        values = np.empty(held.shape, kind.dtype)
-        held.read(values)
+        values = np.empty(held.shape, dtype)
+        held.read(values, memory)
         if values.dtype.kind in "SO":
             texts = [item if isinstance(item, str) else decoded(bytes(item or b"")) for item in values.ravel().tolist()]
             return " ".join(text.rstrip("\x00") for text in texts)
@@ -83,7 +109,8 @@ class _Dimensions:
 
     def add(self, name: str, place: Any) -> None:
         space = place.get_space()
-        self.sizes[name] = int(place.shape[0]) if place.rank else 0
+        shape = space.get_simple_extent_dims()
+        self.sizes[name] = int(shape[0]) if shape else 0
         self._scales[name] = place
         self._unlimited |= h5s.UNLIMITED in space.get_simple_extent_dims(maxdims=True)
 
@@ -113,17 +140,11 @@ class _Dimensions:
         return tuple(names[number] for number in _Attributes(place).get("_Netcdf4Coordinates").tolist())
 
 
-class _Variable(Variable):
+class _Variable(_Attributes, Variable):
     def __init__(self, name: str, place: Any, dimensions: _Dimensions, budget: Budget) -> None:
+        super().__init__(place)
         self.name = name
-        self._place, self._all, self._budget = place, dimensions, budget
-        self._attributes = _Attributes(place)
-
-    def get(self, name: str) -> Any:
-        return self._attributes.get(name)
-
-    def names(self) -> tuple[str, ...]:
-        return self._attributes.names()
+        self._all, self._budget = dimensions, budget
 
     @cached_property
     def _held(self) -> tuple[int, ...]:
@@ -139,9 +160,12 @@ class _Variable(Variable):
         return tuple(max(sizes.get(name, size), size) for name, size in zip(self.dimensions, self._held, strict=True))
 
     @cached_property
+    def _types(self) -> tuple[np.dtype[Any], Any]:
+        return _held_as(self._place.get_type())
+
+    @cached_property
     def dtype(self) -> np.dtype[Any]:  # type: ignore[override]
-        kind: np.dtype[Any] = self._place.dtype
-        return kind
+        return self._types[0]
 
     def read(self) -> NDArray[Any]:
         self._budget.take(self.size)
@@ -149,7 +173,7 @@ class _Variable(Variable):
         if self.dtype.kind not in "biufS" and not strings:
             raise UnfitError(f"variable {self.name} is neither numbers nor text")
         values = np.empty(self._held, self.dtype)
-        self._place.read(h5s.ALL, h5s.ALL, values)
+        self._place.read(h5s.ALL, h5s.ALL, values, self._types[1])
         if strings:
             texts = [item if isinstance(item, str) else decoded(bytes(item or b"")) for item in values.ravel().tolist()]
             values = np.array(texts, object).reshape(self._held)
@@ -169,6 +193,15 @@ class _Variable(Variable):
         return full
 
 
+def _access() -> Any:
+    access = h5p.create(h5p.FILE_ACCESS)
+    access.set_fclose_degree(h5f.CLOSE_STRONG)
+    return access
+
+
+_access_by_path = lru_cache(_access)  # the same for all files
+
+
 def open_hdf5(path: str | None, data: bytes) -> Store:
     """The netCDF-4 file at a path or, without one, in these bytes.
 
@@ -177,12 +210,13 @@ def open_hdf5(path: str | None, data: bytes) -> Store:
     OSError, RuntimeError, KeyError, ValueError
         As h5py does where a file is damaged.
     """
-    access = h5p.create(h5p.FILE_ACCESS)
-    access.set_fclose_degree(h5f.CLOSE_STRONG)
     if path is None:
+        access = _access()
         access.set_fapl_core(backing_store=False)
         access.set_file_image(data)
-    file = h5f.open(b"memory.nc" if path is None else os.fsencode(path), h5f.ACC_RDONLY, access)
+        file = h5f.open(b"memory.nc", h5f.ACC_RDONLY, access)
+    else:
+        file = h5f.open(os.fsencode(path), h5f.ACC_RDONLY, _access_by_path())
     try:
         root = h5g.open(file, b"/")
         budget = Budget()

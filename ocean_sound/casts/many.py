@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import os
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from io import FileIO
 from typing import TYPE_CHECKING, Any
 
@@ -15,6 +15,7 @@ from .cast import AS_MEASURED, MISSING, NOT_EVALUATED, VARIABLES
 from .columns import Recipe, make_recipe
 from .layout import SEARCHED_LINES, find_table
 from .levels import About, Raw, make_block
+from .names import may_name_values
 from .plain_csv import cast_about, decode, finish_found, says_when
 from .preamble import Found, read_preamble
 from .reading import LARGEST_TEXT, is_plain, read_file
@@ -29,6 +30,9 @@ if TYPE_CHECKING:
 
     from .layout import Layout
 
+
+CASTS_PER_BLOCK = 500
+"""Casts after which a block is handed on."""
 _MOST_ODD = 4096  # cells of a file that are left to Python
 _MOST_CASTS = 4096  # casts of a file that are read the fast way
 _FIRST_LEVELS = 2**16  # room for levels at the start
@@ -40,7 +44,7 @@ def read_many(
     *,
     mapping: Mapping[str, str] | None = None,
     settings: Mapping[str, Any] | None = None,
-    casts_per_block: int = 500,
+    casts_per_block: int = CASTS_PER_BLOCK,
 ) -> Iterator[CastBlock]:
     r"""Read the casts of many files, some hundred casts at a time.
 
@@ -81,11 +85,26 @@ def read_many(
     if casts_per_block < 1:
         raise InputError(f"casts_per_block is {casts_per_block}; it must be at least 1")
     common = settings_for(None, mapping, settings)
-    return _read(paths, common, mapping, settings, casts_per_block)
+    files = ((path, _content(path)) for path in (os.fspath(given) for given in paths))
+    return _read(files, common, mapping, settings, casts_per_block)
+
+
+def read_contents(files: Iterable[tuple[str, bytes]]) -> Iterator[CastBlock]:
+    """The same for paths that come with what is in the file, which is then not read a second time for a CSV."""
+    return _read(files, Settings(), None, None, CASTS_PER_BLOCK)
+
+
+def _content(path: str) -> bytes:
+    """What is in a file; nothing where it can't be read, which is then told by the reader of single files."""
+    try:
+        with FileIO(path) as file:
+            return file.readall()
+    except (OSError, ValueError):
+        return b""
 
 
 def _read(
-    paths: Iterable[str | PathLike[str]],
+    files: Iterable[tuple[str, bytes]],
     common: Settings,
     mapping: Mapping[str, str] | None,
     settings: Mapping[str, Any] | None,
@@ -93,13 +112,12 @@ def _read(
 ) -> Iterator[CastBlock]:
     reader = _Reader(common)
     sidecars = _Sidecars()
-    for given in paths:
-        path = os.fspath(given)
+    for path, data in files:
         try:
             if sidecars.has(path):
                 reader.read_alone(path, settings_for(path, mapping, settings))
             else:
-                reader.read(path)
+                reader.read(path, data)
         except (CastFileError, InputError) as error:
             reader.leave_out(path, str(error))
         if reader.count >= casts_per_block:
@@ -127,17 +145,27 @@ class _Sidecars:
 
 
 @dataclass(frozen=True)
-class _Form:
-    """What was found out about one file, which holds for each that begins with the same bytes."""
+class _Orders:
+    """What the kernel is told of the rows below some heads."""
 
-    prefix: bytes
     recipe: Recipe
-    found: Found
     delimiter: int
     kinds: NDArray[np.int64]
     label_names: tuple[str, ...]
     label_kinds: NDArray[np.int64]
     flag_tables: tuple[NDArray[np.int8], ...]  # by column of flags: what each number from 0 means, 0 for nothing
+
+
+@dataclass(frozen=True)
+class _Form:
+    """What was found out about one file, which holds for each that begins with the same bytes."""
+
+    prefix: bytes
+    heads: bytes  # the lines of heads, and of units if there are any, at the end of the prefix
+    encoding_note: str | None
+    found: Found
+    orders: _Orders
+    about: About | None  # for casts of which no column says anything
 
 
 @dataclass
@@ -159,7 +187,7 @@ class _Reader:
         self._kernels = _kernels
         self._settings = settings
         self._form: _Form | None = None
-        self._recipes: dict[Any, Recipe] = {}
+        self._orders: dict[Any, _Orders] = {}
         self._points: tuple[int, ...] = (ord("."), ord(",")) if settings.decimal is None else (ord(settings.decimal),)
         self._numbers = np.empty((0, 0))
         self._odd = np.empty((_MOST_ODD, 4), np.int64)
@@ -190,13 +218,8 @@ class _Reader:
             self._parts.append(block)
             self.count += len(block)
 
-    def read(self, path: str) -> None:
+    def read(self, path: str, data: bytes) -> None:
         """Read a file, the fast way if it can be."""
-        try:
-            with FileIO(path) as file:
-                data = file.readall()
-        except (OSError, ValueError):
-            data = b""
         if not (data and self._read_alike(path, data)):
             self.read_alone(path, self._settings)
 
@@ -213,7 +236,7 @@ class _Reader:
         if not (data.isascii() or data[begin:].isascii()) or data.find(b'"', begin) >= 0 or len(data) > LARGEST_TEXT:
             return False
         # a row has at least a delimiter or a line end for each of its cells
-        run = self._run_for(form.recipe, (len(data) - begin) // form.kinds.size + 2)
+        run = self._run_for(form.orders.recipe, (len(data) - begin) // form.orders.kinds.size + 2)
         parsed = self._parse(data, form, run.levels)
         if parsed is None:
             return False
@@ -233,35 +256,63 @@ class _Reader:
         """What holds for all files that begin as this one does; None where it is not plain enough."""
         if self._settings.encoding is not None or not is_plain(data):
             return None
-        text, note = decode(data)
-        lines = text.split("\n", SEARCHED_LINES + 50)
         try:
-            layout = find_table(lines, self._settings, path)
-            found = read_preamble(lines[: layout.head_line], path)
-            recipe = self._recipe(layout, found, path)
+            form = self._same_heads(path, data) or self._other_heads(path, data)
         except (CastFileError, InputError):
             return None  # said again by the other way
-        if layout.delimiter is None:
-            return None
-        finish_found(found, recipe, note, self._settings)
-        begin = 0
-        for _ in range(layout.first_row):
-            begin = data.find(b"\n", begin) + 1
-            if begin == 0:
-                return None
-        form = _form(data[:begin], recipe, found, layout.delimiter, self._settings)
         if form is not None:
             self._form = form
         return form
 
-    def _recipe(self, layout: Layout, found: Found, path: str) -> Recipe:
+    def _same_heads(self, path: str, data: bytes) -> _Form | None:
+        """The form of a file that has the heads of the one before, below lines none of which can hold heads."""
+        before = self._form
+        if before is None or self._settings.columns:
+            return None
+        begin = data.find(before.heads)
+        if begin < 0 or data[begin - 1 : begin] not in {b"", b"\n"}:
+            return None
+        prefix = data[: begin + len(before.heads)]
+        text, note = decode(prefix)
+        above = text.split("\n")[: -before.heads.count(b"\n") - 1]
+        if len(above) >= SEARCHED_LINES or may_name_values(" ".join(above)):
+            return None
+        found = read_preamble(above, path)
+        if found.units != before.found.units or note != before.encoding_note:
+            return None  # the same bytes might mean other heads
+        return self._form_of(path, prefix, before.heads, found, before.orders, note)
+
+    def _other_heads(self, path: str, data: bytes) -> _Form | None:
+        text, note = decode(data)
+        lines = text.split("\n", SEARCHED_LINES + 50)
+        layout = find_table(lines, self._settings, path)
+        found = read_preamble(lines[: layout.head_line], path)
+        orders = self._orders_for(layout, found, path)
+        ends = [0]
+        for _ in range(layout.first_row):
+            ends.append(data.find(b"\n", ends[-1]) + 1)
+        if orders is None or 0 in ends[1:] or not data[ends[-1] :].isascii():
+            return None
+        return self._form_of(path, data[: ends[-1]], data[ends[layout.head_line] : ends[-1]], found, orders, note)
+
+    def _form_of(
+        self, path: str, prefix: bytes, heads: bytes, found: Found, orders: _Orders, note: str | None
+    ) -> _Form | None:
+        if prefix.count(b"\r") != prefix.count(b"\r\n"):
+            return None  # lines that end by a carriage return alone
+        finish_found(found, orders.recipe, note, self._settings)
+        about = None if orders.label_names else self._about_one(path, found, orders, {})
+        return _Form(prefix, heads, note, found, orders, about)
+
+    def _orders_for(self, layout: Layout, found: Found, path: str) -> _Orders | None:
         key = layout.heads, layout.units, layout.delimiter, tuple(found.units.items())
-        recipe = self._recipes.get(key)
-        if recipe is None:
-            if len(self._recipes) >= _MOST_RECIPES:
-                self._recipes.clear()
-            recipe = self._recipes[key] = make_recipe(layout, found.units, self._settings, path)
-        return recipe
+        orders = self._orders.get(key)
+        if orders is None and layout.delimiter is not None:
+            if len(self._orders) >= _MOST_RECIPES:
+                self._orders.clear()
+            recipe = make_recipe(layout, found.units, self._settings, path)
+            orders = self._orders[key] = _orders(recipe, layout.delimiter, self._settings)
+        return orders
 
     def _run_for(self, recipe: Recipe, levels: int) -> _Run:
         """The run that a file of this recipe belongs to, with room for its levels."""
@@ -278,20 +329,20 @@ class _Reader:
 
     def _parse(self, data: bytes, form: _Form, first: int) -> tuple[int, NDArray[np.int64]] | None:
         """The place behind the last level, and where the labels of each cast stand; None where it is not plain."""
-        kernels, numbers = self._kernels, self._numbers
+        kernels, numbers, orders = self._kernels, self._numbers, form.orders
         marks = np.frombuffer(data, np.uint8)
-        labels = len(form.label_names)
+        labels = len(orders.label_names)
         cells = np.empty((_MOST_CASTS if labels else 1, labels, 2), np.int64)
         for point in self._points:
-            if point == form.delimiter:
+            if point == orders.delimiter:
                 continue
             status, end, odd, groups = kernels.parse_rows(
-                marks, len(form.prefix), form.delimiter, point, form.kinds, form.label_kinds, numbers, first,
+                marks, len(form.prefix), orders.delimiter, point, orders.kinds, orders.label_kinds, numbers, first,
                 self._odd, self._group_rows, cells, np.empty((labels, 2), np.int64),
             )  # fmt: skip
             if status != kernels.FINE or end == first:
                 continue
-            values = len(form.recipe.columns)
+            values = len(orders.recipe.columns)
             if not (
                 self._settle_odd(data, int(odd), values, comma=point == ord(","))
                 and not np.isnan(numbers[:values, first]).any()  # else a row of units might be meant
@@ -314,7 +365,7 @@ class _Reader:
 
     def _flags_known(self, form: _Form, first: int, end: int) -> bool:
         """Turn flags into those of QARTOD; False where one is not of its code."""
-        for column, table in enumerate(form.flag_tables, len(form.recipe.columns)):
+        for column, table in enumerate(form.orders.flag_tables, len(form.orders.recipe.columns)):
             found = self._numbers[column, first:end]
             blank = np.isnan(found)
             whole = np.where(blank, 0.0, found)
@@ -329,12 +380,12 @@ class _Reader:
     def _about(self, path: str, data: bytes, form: _Form, cells: NDArray[np.int64]) -> list[About] | None:
         source = os.path.basename(path)  # noqa: PTH119  # a Path costs more than all the rest
         name = os.path.splitext(source)[0]  # noqa: PTH122
-        if not form.label_names:
-            return [self._about_one(path, form, {}, source, name)]
+        if form.about is not None:
+            return [replace(form.about, where=path, source=source, id=form.about.id or name)]
         texts = [
             {
                 label: data[begin:end].decode("ascii").strip()
-                for label, (begin, end) in zip(form.label_names, places, strict=True)
+                for label, (begin, end) in zip(form.orders.label_names, places, strict=True)
             }
             for places in cells.tolist()
         ]
@@ -343,29 +394,31 @@ class _Reader:
         ids = [one.get("id", "") for one in texts]
         if len(set(ids)) < len(ids):
             return None  # rows of a cast that do not stand together
+        places = [path] if len(texts) == 1 else [f"{path}: cast {ident!r}" for ident in ids]
         try:
-            return [
-                self._about_one(path if len(texts) == 1 else f"{path}: cast {one['id']!r}", form, one, source, name)
-                for one in texts
+            abouts = [
+                self._about_one(place, form.found, form.orders, one) for place, one in zip(places, texts, strict=True)
             ]
         except CastFileError:
             return None  # said again, with its line, by the other way
+        return [replace(about, source=source, id=about.id or name) for about in abouts]
 
-    def _about_one(self, where: str, form: _Form, texts: dict[str, str], source: str, name: str) -> About:
+    def _about_one(self, where: str, found: Found, orders: _Orders, texts: dict[str, str]) -> About:
+        """What the lines above the table and the cells of its columns say of a cast."""
         said = {
             label: (text, where)
             for label, text in texts.items()
-            if label in {"latitude", "longitude"} or (label != "id" and says_when(text, label, form.recipe))
+            if label in {"latitude", "longitude"} or (label != "id" and says_when(text, label, orders.recipe))
         }
         return cast_about(
-            {**form.found.metadata, **said},
-            form.found,
+            {**found.metadata, **said},
+            found,
             self._settings,
             where=where,
-            source=source,
+            source="",
             id=texts.get("id", ""),
-            default=name,
-            notes=form.found.notes,
+            default="",
+            notes=found.notes,
         )
 
     def _finish_run(self) -> None:
@@ -383,8 +436,7 @@ class _Reader:
         self._parts.append(make_block(raw, recipe, self._settings, run.about))
 
 
-def _form(prefix: bytes, recipe: Recipe, found: Found, delimiter: str, settings: Settings) -> _Form | None:
-    """The instructions of the kernel; None where flags are not numbers."""
+def _orders(recipe: Recipe, delimiter: str, settings: Settings) -> _Orders:
     kinds = np.full(len(recipe.heads), -1, np.int64)
     places = [column.index for column in recipe.columns] + [flag.index for flag in recipe.flags]
     kinds[places] = np.arange(len(places))
@@ -399,10 +451,9 @@ def _form(prefix: bytes, recipe: Recipe, found: Found, delimiter: str, settings:
             if text.isdecimal() and len(text) <= 2:
                 table[int(text)] = meaning
         tables.append(table)
-    return _Form(
-        prefix, recipe, found, ord(delimiter), kinds, names, np.array([what.get(name, 0) for name in names], np.int64),
-        tuple(tables),
-    )  # fmt: skip
+    return _Orders(
+        recipe, ord(delimiter), kinds, names, np.array([what.get(name, 0) for name in names], np.int64), tuple(tables)
+    )
 
 
 def _joined(parts: Sequence[CastBlock | tuple[str, str]]) -> CastBlock:

@@ -138,6 +138,8 @@ def floats(variable: Variable) -> NDArray[np.float64]:
 
 def _numbers(given: Any) -> NDArray[np.float64]:
     """An attribute as numbers, those that stand as text among them; none where it is not numbers."""
+    if isinstance(given, np.ndarray) and given.dtype == np.float64 and given.ndim:
+        return given  # as nearly all are
     try:
         return np.atleast_1d(np.asarray(given.split() if isinstance(given, str) else given, np.float64))
     except (TypeError, ValueError):

@@ -39,7 +39,7 @@ def decode(data: bytes, encoding: str | None = None) -> tuple[str, str | None]:
         text = data.decode("utf-16", errors="replace")
     else:
         try:
-            text = data.decode("utf-8-sig")
+            text = data.decode("ascii" if data.isascii() else "utf-8-sig")
         except UnicodeDecodeError:
             text, note = data.decode("latin-1"), "text is not UTF-8; read as Latin-1"
     return (text.replace("\r\n", "\n").replace("\r", "\n") if "\r" in text else text), note

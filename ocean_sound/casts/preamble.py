@@ -46,32 +46,47 @@ class Found:
     notes: list[str] = field(default_factory=list)
 
 
-@lru_cache(maxsize=1024)
 def _key_and_value(line: str) -> tuple[str, str]:
     bare = line.strip().lstrip(COMMENTS)
     match = _PARTED.search(bare) if len(bare) <= _LONGEST else None
     if match is None:
         return "", ""
     key, value = bare[: match.start()].strip(), bare[match.end() :].lstrip(" \t,;:=").rstrip(" \t,;")
-    return (plain_words(key), value.strip('"')) if key and value else ("", "")
+    return (key, value.strip('"')) if value else ("", "")
+
+
+@dataclass(frozen=True)
+class _Key:
+    """What a key of a preamble is about: a column's unit, where and when, or an attribute; empty where it is not."""
+
+    column: str = ""
+    metadata: str = ""
+    attribute: str = ""
+
+
+@lru_cache(maxsize=1024)
+def _known(key: str) -> _Key:
+    plain = plain_words(key)
+    if plain.endswith((" unit", " units")):
+        return _Key(column=plain.rsplit(" ", 1)[0])
+    name = meaning(plain)
+    if name in METADATA:
+        return _Key(metadata=name)
+    return _Key(attribute=re.sub(r"\W+", "_", plain).strip("_"))
 
 
 def read_preamble(lines: list[str], where: str) -> Found:
     """Keys and values above the table: where and when, units of columns, and attributes for the rest."""
     found = Found()
     for number, line in enumerate(lines, 1):
-        key, value = _key_and_value(line)
-        if not key:
-            continue
-        if key.endswith((" unit", " units")):
-            found.units[key.rsplit(" ", 1)[0]] = value
-            continue
-        name = meaning(key)
-        if name in METADATA:
-            found.metadata.setdefault(name, (value, f"{where}: line {number}"))
-        else:
-            found.attributes.setdefault(re.sub(r"\W+", "_", key).strip("_"), value)
-    found.attributes.pop("", None)
+        text, value = _key_and_value(line)
+        key = _known(text)
+        if key.column:
+            found.units[key.column] = value
+        elif key.metadata:
+            found.metadata.setdefault(key.metadata, (value, f"{where}: line {number}"))
+        elif key.attribute:
+            found.attributes.setdefault(key.attribute, value)
     return found
 
 

@@ -178,6 +178,21 @@ FILES = {
     "feet": HEADS.replace("[m]", "[ft]") + LEVELS,
     "preamble A": "cast_id: A\nlatitude: 54.5\nlongitude: 352\ntime: 2026-01-31T12:00Z\nship: none\n" + HEADS + LEVELS,
     "preamble B": "cast_id: B\nlatitude: 55 30.5 N\nlongitude: 8 W\ntime: 31 Jan 2026 6:00\n" + HEADS + LEVELS,
+    "preamble C": "cast_id: C\nlatitude: -3\nlongitude: 8 E\ntime: 20260131\nship: depth, temp\n" + HEADS + LEVELS,
+    "preamble D": "cast_id: D\nlatitude: 91\nlongitude: 8 E\ntime: 20260131\nship: none\n" + HEADS + LEVELS,
+    "preamble E": "cast_id: depth temp sal\nlatitude: 1\nlongitude: 8\ntime:\nship: \n" + HEADS + LEVELS,
+    "many rows": "cast_id: F\nlatitude: 1\nlongitude: 8\ntime: 20260131\nship: x\n" + HEADS + LEVELS * 20,
+    "many rows, units": "cast_id: F\nlatitude: 1\n\n\nship: x\ndepth,temp,sal\nm,degC,PSU\n" + LEVELS * 20,
+    "long preamble": "".join(f"key {number}: value {number}\n" for number in range(400)) + HEADS + LEVELS * 20,
+    "gap below heads": HEADS + "# nothing\n" * 19 + LEVELS * 200,
+    "gap of words": HEADS + "none,none,none\n" * 19 + LEVELS * 200,
+    "latin rows": (HEADS + LEVELS + "# 5 °C\n").encode("latin-1"),
+    "cr above": "ship: x\rlatitude: 5\ndepth [m],temp [degC]\n0,1\n1,2\n2,3\n",
+    "heads of utf-8": "ship: x\ndepth [m],temp [°C]\n" + "0,1\n1,2\n",
+    "heads of both": "ship: \u00b0\n".encode("latin-1") + "depth [m],temp [°C]\n0,1\n1,2\n".encode(),
+    "units told": "depth units: ft\ndepth,temp [degC]\n0,1\n1,2\n",
+    "other units told": "depth units: m\ndepth,temp [degC]\n0,1\n1,2\n",
+    "names of values above": "pressure sensor: 7\nlatitude: 5\n" + HEADS + LEVELS,
     "columns": "cast,lat,lon,time,depth,temp\nA,54,-8,2026-01-31T12:00Z,0,1\nA,54,-8,2026-01-31T12:01Z,1,2\n"
     "B,55,-9,2026-02-01,0,3\n",
     "not together": "cast,depth,temp\nA,0,1\nB,0,2\nA,1,3\n",
@@ -260,6 +275,21 @@ def test_any_mixture_of_files_is_read_as_one_by_one(tmp_path_factory, names, siz
     assert_same(list(read_many(paths, casts_per_block=size)), *one_by_one(paths))
 
 
+@pytest.mark.parametrize(
+    "names",
+    [
+        ["latin rows", "plain"],
+        ["heads of utf-8", "heads of both", "heads of utf-8"],
+        ["units told", "other units told", "units told"],
+        ["preamble A", "plain", "preamble C", "preamble D", "preamble E", "many rows", "names of values above"],
+        ["cr above", "cr above"],
+    ],
+)
+def test_what_was_learnt_of_one_file_is_not_said_of_another(tmp_path, names):
+    paths = write(tmp_path, [FILES[name] for name in names])
+    assert_same(list(read_many(paths)), *one_by_one(paths))
+
+
 EDITS = st.lists(
     st.tuples(
         st.integers(0, 90),
@@ -299,7 +329,19 @@ def test_settings_and_sidecars_hold_here_too(tmp_path):
 def test_the_fast_way_is_taken(tmp_path, monkeypatch):
     """Files that differ only in their numbers, positions and names never go the slow way."""
     names = ["plain", "again", "no end", "crlf", "gaps", "words", "comments", "long", "semicolon", "comma", "utf-8"]
-    names += ["bom", "units row", "feet", "preamble A", "preamble B", "columns", "seconds", "flags", "air", "latin"]
+    names += [
+        "bom",
+        "units row",
+        "feet",
+        "preamble A",
+        "preamble B",
+        "many rows",
+        "columns",
+        "seconds",
+        "flags",
+        "air",
+        "latin",
+    ]
     paths = write(tmp_path, [FILES[name] for name in names])
     alone = []
     monkeypatch.setattr(_Reader, "read_alone", lambda _reader, path, _settings: alone.append(path))
