@@ -104,6 +104,7 @@ def write_archive(
         try:
             with netCDF4.Dataset(path, "w", format="NETCDF4") as file:
                 file.set_auto_mask(False)
+                file.set_fill_off()  # all of it is written below, and need not be filled before
                 _define(file, shape, about, compression)
                 span = _fill(file, parts, about, progress)
                 _fill_left_out(file, shape.left_out)

@@ -29,6 +29,9 @@ def summaries(speeds: SpeedColumns) -> dict[str, Floats]:
     dict
         ``deepest_depth``, ``surface_speed``, ``harmonic_mean_speed``, ``sonic_layer_depth``, each of shape (casts,).
     """
+    from .._numba import kernel_array
+    from . import _kernels
+
     count = speeds.row_size.size
     found = {
         name: np.full(count, np.nan)
@@ -42,11 +45,13 @@ def summaries(speeds: SpeedColumns) -> dict[str, Floats]:
     found["deepest_depth"][filled] = speeds.depth[last]
     found["surface_speed"][filled[surface]] = speeds.speed[first[surface]]
     found["harmonic_mean_speed"][filled] = (speeds.depth[last] - speeds.depth[first]) / _travel_times(speeds)[filled]
-    for index in filled[surface].tolist():
-        rows = slice(speeds.starts[index], speeds.starts[index + 1])
-        found["sonic_layer_depth"][index] = _sonic_layer_depth(
-            speeds.depth[rows], speeds.speed[rows], surface_assumed=bool(speeds.level[rows][0] < 0)
-        )
+    assumed = np.zeros(count, np.bool_)
+    assumed[filled] = speeds.level[first] < 0
+    layers = _kernels.sonic_layer_depths(
+        speeds.starts.astype(np.int64), kernel_array(speeds.depth), kernel_array(speeds.speed), assumed,
+        DEFAULT_PROMINENCE,
+    )  # fmt: skip
+    found["sonic_layer_depth"][filled[surface]] = layers[filled[surface]]
     return found
 
 
@@ -65,25 +70,3 @@ def _travel_times(speeds: SpeedColumns) -> Floats:
     total = np.zeros(speeds.row_size.size)
     total[filled] = np.add.reduceat(times, speeds.starts[:-1][filled])
     return total
-
-
-def _sonic_layer_depth(depth: Floats, speed: Floats, *, surface_assumed: bool) -> float:
-    """The depth of the first maximum from the surface down, as `Profile.features` has it; NaN where there is none.
-
-    A swing counts from the prominence up, so the first that counts is told by how far the speed falls below the
-    highest, or rises above the lowest, of all before.
-    """
-    drops = np.maximum.accumulate(speed) - speed >= DEFAULT_PROMINENCE
-    rises = speed - np.minimum.accumulate(speed) >= DEFAULT_PROMINENCE
-    drop, rise = int(drops.argmax()), int(rises.argmax())
-    if not rises[rise] or (drops[drop] and drop < rise):
-        return 0.0  # no layer, or the fastest water is at the surface
-    below = speed[rise:]
-    ends = np.maximum.accumulate(below) - below >= DEFAULT_PROMINENCE
-    end = int(ends.argmax())
-    if not ends[end]:
-        return float("nan")  # the speed grows all the way down
-    level = rise + int(below[: end + 1].argmax())
-    if surface_assumed and level == 1 and int(speed[: rise + 1].argmin()) == 0:
-        return 0.0  # a layer that was assumed, not measured
-    return float(depth[level])

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import hashlib
 import json
 import os
 from dataclasses import asdict, dataclass, replace
@@ -11,7 +12,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from ..casts import VARIABLES, CastBlock, Thresholds, check_block, read_blocks
-from ..casts.many import read_many
+from ..casts.many import read_contents
 from ..errors import CastFileError, InputError, OceanSoundError, OutputError
 from ..files import checksum
 from ..profile.speeds import speeds_of_block
@@ -189,31 +190,36 @@ def _runs(files: Iterable[Input]) -> Iterator[dict[str, Input]]:
 
 def _read_run(run: dict[str, Input], left_out: list[tuple[str, str, str]]) -> Iterator[_Found]:
     said = _Said(run)
-    digests = {}
-    for name, entry in run.items():
-        try:
-            digests[name] = checksum(entry.path)
-        except InputError as error:
-            said.leave_out(entry, "", str(error))
+    digests: dict[str, str] = {}
     try:
-        found = list(said.named(read_many([run[name].path for name in digests]), digests))
+        found = list(said.named(read_contents(_contents(run, digests, said)), digests))
     except (MemoryError, OutputError):
         raise
     except Exception:  # noqa: BLE001 - one file that trips a reader must not cost the others
         said = _Said(run)
-        for name in run.keys() - digests.keys():
-            said.leave_out(run[name], "", "can't be read")
-        found = [one for name in digests for one in _read_alone(name, run, digests, said)]
+        found = [one for name in run for one in _read_alone(name, run, said)]
     yield from found
     said.close()
     left_out += said.left_out
 
 
-def _read_alone(name: str, run: dict[str, Input], digests: dict[str, str], said: _Said) -> Iterator[_Found]:
+def _contents(run: dict[str, Input], digests: dict[str, str], said: _Said) -> Iterator[tuple[str, bytes]]:
+    """Path and content of each file that can be read; its checksum is put into `digests`."""
+    for name, entry in run.items():
+        try:
+            data = Path(entry.path).read_bytes()
+        except OSError as error:
+            said.leave_out(entry, "", f"can't be read: {error.strerror or error}")
+            continue
+        digests[name] = hashlib.sha256(data).hexdigest()
+        yield entry.path, data
+
+
+def _read_alone(name: str, run: dict[str, Input], said: _Said) -> Iterator[_Found]:
     """One file by itself; whatever goes wrong is said of it."""
     entry = run[name]
     try:
-        yield from said.named(read_blocks(entry.path), digests)
+        yield from said.named(read_blocks(entry.path), {name: checksum(entry.path)})
     except MemoryError:
         raise
     except (CastFileError, InputError) as error:

@@ -187,7 +187,7 @@ def test_a_file_that_trips_a_reader_does_not_cost_the_others(tmp_path, casts, mo
     folder, _ = casts
     alone = working.read_blocks
 
-    def many(paths):
+    def many(files):
         raise KeyError("a trap")
         yield
 
@@ -196,7 +196,7 @@ def test_a_file_that_trips_a_reader_does_not_cost_the_others(tmp_path, casts, mo
             raise KeyError("a trap")
         return alone(path)
 
-    monkeypatch.setattr(working, "read_many", many)
+    monkeypatch.setattr(working, "read_contents", many)
     monkeypatch.setattr(working, "read_blocks", one)
     built = build_archive([folder], tmp_path / "a.nc", workers=0)
     assert built.casts == 11
@@ -424,12 +424,13 @@ def test_a_worker_that_dies_is_told_and_its_build_resumed(tmp_path, casts, small
         "    sys.exit(cli.run(sys.argv[1:]))\n"
         "else:  # a worker, which meets its end\n"
         "    from ocean_sound.archive import working\n"
-        "    whole = working.read_many\n"
-        "    def trap(paths):\n"
-        "        if any('c0005' in path for path in paths):\n"
+        "    whole = working.read_contents\n"
+        "    def trap(files):\n"
+        "        files = list(files)\n"
+        "        if any('c0005' in path for path, _ in files):\n"
         "            os._exit(9)\n"
-        "        return whole(paths)\n"
-        "    working.read_many = trap\n"
+        "        return whole(files)\n"
+        "    working.read_contents = trap\n"
     )
     arguments = ["archive", "build", folder, "-o", tmp_path / "a.nc", "--workers", "1"]
     done = subprocess.run(
@@ -541,12 +542,13 @@ def test_all_that_a_cast_can_hold_comes_back(tmp_path, casts, monkeypatch):
         latitude=-0.125,
         longitude=179.75,
     )
-    many = working.read_many
+    many = working.read_contents
 
-    def mixed(paths):
-        yield from [CastBlock.from_casts([rich])] if "c0001" in paths[0] else many(paths)
+    def mixed(files):
+        files = list(files)
+        yield from [CastBlock.from_casts([rich])] if "c0001" in files[0][0] else many(files)
 
-    monkeypatch.setattr(working, "read_many", mixed)
+    monkeypatch.setattr(working, "read_contents", mixed)
     build_archive([folder / "c0000.csv", folder / "c0001.csv"], tmp_path / "a.nc", workers=0, check=False)
     with open_archive(tmp_path / "a.nc") as archive:
         plain, back = archive

@@ -7,10 +7,13 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
+from ocean_sound.archive import _kernels
 from ocean_sound.archive.blocks import cut, in_pieces, joined
 from ocean_sound.archive.summary import summaries
 from ocean_sound.casts import Cast, CastBlock, read_casts
 from ocean_sound.profile.speeds import speeds_of_block
+
+pytestmark = pytest.mark.kernels
 
 # a walk of speeds whose swings lie on both sides of the prominence of 0.1 m/s, and often at 0
 walks = st.lists(st.sampled_from([-0.25, -0.06, -0.03, 0.0, 0.03, 0.06, 0.25]), min_size=1, max_size=30)
@@ -43,6 +46,13 @@ def test_it_agrees_with_the_features_of_each_profile(casts):
 def test_a_block_without_a_profile():
     lone = Cast(id="lone", values={"depth": [5.0], "sound_speed": [1500.0]})
     assert all(np.isnan(column).all() for column in summaries(speeds_of_block(CastBlock.from_casts([lone]))).values())
+
+
+def test_a_layer_down_to_the_first_measured_level_counts_only_if_the_surface_was_measured():
+    starts, depth = np.array([0, 4, 8, 8]), np.tile([0.0, 49.0, 60.0, 70.0], 2)
+    speed = np.tile([1500.0, 1500.8, 1500.2, 1500.1], 2)
+    found = _kernels.sonic_layer_depths(starts, depth, speed, np.array([True, False, False]), 0.1)
+    assert found.tolist() == [0.0, 49.0, 0.0]
 
 
 def test_real_casts(real_data):
