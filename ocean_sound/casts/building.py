@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from ..errors import CastFileError, InputError
-from .cast import MEASURED, MISSING, NOT_EVALUATED, VERTICAL, Cast
+from .cast import FAIL, MEASURED, MISSING, NOT_EVALUATED, VERTICAL, Cast
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
@@ -33,13 +33,17 @@ def flagged_gaps(
         if finite.all():
             clean[name] = column
             if own is not None:
-                # 'missing' beside a value: nothing says that the value is good
-                marked[name] = np.where(own == MISSING, NOT_EVALUATED, own).astype(np.int8)
+                marked[name] = _contradicted(own)
             continue
         clean[name] = np.where(finite, column, np.nan)
-        base = np.int8(NOT_EVALUATED) if own is None else np.where(own == MISSING, NOT_EVALUATED, own)
+        base = np.int8(NOT_EVALUATED) if own is None else _contradicted(own)
         marked[name] = np.where(finite, base, MISSING).astype(np.int8)
     return clean, marked
+
+
+def _contradicted(flags: NDArray[np.int8]) -> NDArray[np.int8]:
+    """Flags of values that are there: one that its source calls missing must not be used as if it were good."""
+    return np.where(flags == MISSING, FAIL, flags).astype(np.int8)
 
 
 def _usable(values: Mapping[str, NDArray[np.float64]]) -> bool:

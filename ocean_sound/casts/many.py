@@ -371,7 +371,7 @@ class _Reader:
             whole = np.where(blank, 0.0, found)
             if not ((whole >= 0.0) & (whole < table.size) & (whole == np.floor(whole))).all():
                 return False
-            flags = np.where(blank, np.int8(MISSING), table[whole.astype(np.intp)])
+            flags = np.where(blank, np.int8(NOT_EVALUATED), table[whole.astype(np.intp)])
             if not flags.all():
                 return False
             self._numbers[column, first:end] = flags

@@ -8,6 +8,7 @@ import numpy as np
 
 from ..errors import CastFileError, InputError
 from .building import NoUsableLevelError
+from .cast import NOT_EVALUATED
 from .columns import make_recipe, plain_flag
 from .layout import SEARCHED_LINES, find_table
 from .levels import About, Raw, make_block
@@ -174,7 +175,7 @@ def _flags(texts: list[str], column: FlagColumn, table: Table) -> NDArray[np.int
         if plain in column.codes:
             known[text] = column.codes[plain]
         elif plain in {"", "NAN"}:
-            known[text] = 9
+            known[text] = NOT_EVALUATED
         else:
             row = texts.index(text)
             raise CastFileError(

@@ -170,7 +170,7 @@ def test_levels_in_air_are_flagged():
 def test_flags_of_a_code_that_is_told():
     text = "depth,temp,temp QC,sal,QC_sal\n0,1,1,35,0\n1,2,4,35,3\n2,3,9,35,2\n"
     cast = parse(text, columns={"temperature_flag": "temp QC [argo]", "salinity_flag": "QC_sal [seadatanet]"})
-    assert cast.flags["temperature"].tolist() == [1, 4, 2]  # 'missing' beside a value says nothing of the value
+    assert cast.flags["temperature"].tolist() == [1, 4, 4]  # 'missing' beside a value: not to be used
     assert cast.flags["salinity"].tolist() == [2, 3, 1]
     cast = parse(text, flag_codes={"0": 2, "1": 1, "2": 1, "3": 4, "4": 4, "9": 9})
     assert cast.flags["salinity"].tolist() == [2, 4, 1]

@@ -115,7 +115,7 @@ def test_gaps_and_fills_are_flagged_missing():
 
 def test_flags_of_our_own_are_read():
     cast = parse("depth,temperature,temperature_flag\n0,1,1\n1,2,4\n2,,9\n3,4,9\n")
-    assert cast.flags["temperature"].tolist() == [1, 4, 9, 2]  # 'missing' beside a value says nothing of the value
+    assert cast.flags["temperature"].tolist() == [1, 4, 9, 4]  # 'missing' beside a value: not to be used
     with pytest.raises(CastFileError, match=r"line 3, column 'temperature_flag': flag 7; QARTOD"):
         parse("depth,temperature,temperature_flag\n0,1,1\n1,2,7\n")
 
