@@ -28,6 +28,8 @@ Result = TypeVar("Result")
 AHEAD = 3
 # How often a worker looks whether the process that started it is still there, s.
 _WATCH = 0.5
+# How long an ended worker may take to go before it is killed, s.
+_PATIENCE = 5.0
 
 
 def usable_processors() -> int:
@@ -75,7 +77,23 @@ def workers(number: int | None = None, *, scheduler: str | None = None) -> Itera
     try:
         yield pool, count
     finally:
-        pool.shutdown(wait=True, cancel_futures=True)
+        _end(pool)
+
+
+def _end(pool: ProcessPoolExecutor) -> None:
+    """End the workers, whose results are taken or no longer wanted.
+
+    They are not asked to leave one by one: where one was killed while it held the lock of the queue of results, the
+    others would wait for that lock for ever, and we for them.
+    """
+    processes = list((pool._processes or {}).values())  # noqa: SLF001 - public only from Python 3.14 on
+    pool.shutdown(wait=False, cancel_futures=True)
+    for process in processes:
+        process.terminate()
+    for process in processes:
+        process.join(_PATIENCE)
+        if process.is_alive():
+            process.kill()
 
 
 @contextmanager

@@ -76,6 +76,21 @@ def test_a_worker_that_dies_is_told():
         list(in_order(os._exit, [3], executor=pool, number=count))
 
 
+def test_a_worker_that_is_killed_with_the_lock_of_the_results_keeps_nobody_waiting():
+    """It takes the lock when its work is done, and is killed while the pool is shutting down."""
+    code = (
+        "import os, sys, threading\n"
+        "lock = sys._getframe().f_back.f_locals['result_queue']._wlock\n"
+        "threading.Timer(0.2, lock.acquire).start()\n"
+        "threading.Timer(1.0, os.kill, (os.getpid(), 9)).start()\n"
+    )
+    with workers(2) as (pool, count):
+        list(in_order(exec, [code, "pass", "pass", "pass"], executor=pool, number=count))
+        time.sleep(0.5)
+        begun = time.monotonic()
+    assert time.monotonic() - begun < 15.0
+
+
 def test_workers_leave_when_their_parent_is_killed():
     """The parent is killed outright while its workers wait for work."""
     code = (
