@@ -22,7 +22,6 @@ from .side_by_side import Reading, speeds_side_by_side
 from .speed import assumptions, range_report, sound_speed, speed_of_columns
 from .vertical import (
     DEFAULT_LATITUDE,
-    depth_and_speed_of_columns,
     depth_areas,
     depth_from_density,
     depth_from_pressure,
@@ -51,7 +50,6 @@ __all__ = [
     "conductivity_from_salinity",
     "conservative_temperature",
     "density",
-    "depth_and_speed_of_columns",
     "depth_areas",
     "depth_from_density",
     "depth_from_pressure",

@@ -303,27 +303,6 @@ def depth_from_density(
     return _integrated(p, sa, gsw.CT_from_t(sa, t, p), known_latitude(latitude), rows)
 
 
-def depth_and_speed_of_columns(
-    pressure: Array, temperature: Array, salinity: Array, *, latitude: Any, longitude: Any, row_size: Any
-) -> tuple[Array, Array]:
-    """Depth as `depth_from_density` and speed as `teos10` of casts in flat columns, sharing what costs most.
-
-    That is the Absolute Salinity and Conservative Temperature of TEOS-10, computed once for both.
-
-    Examples
-    --------
-    >>> import numpy as np
-    >>> columns = (np.array([0.0, 100.0]), np.full(2, 10.0), np.full(2, 35.0))
-    >>> depth, speed = depth_and_speed_of_columns(*columns, latitude=45.0, longitude=-20.0, row_size=[2])
-    >>> depth.round(2), speed.round(2)
-    (array([ 0.  , 99.28]), array([1489.82, 1491.44]))
-    """
-    sa = absolute_salinity_of(salinity, pressure, latitude, longitude)
-    ct = gsw.CT_from_t(sa, temperature, pressure)
-    depth = _integrated(pressure, sa, ct, known_latitude(latitude), np.asarray(row_size, dtype=np.int64))
-    return depth, gsw.sound_speed(sa, ct, pressure)
-
-
 def _integrated(p: Array, sa: Any, ct: Any, latitude: Any, rows: Any) -> Array:
     """Depth from the specific-volume anomaly summed along each row."""
     starts = (np.cumsum(rows) - rows)[rows > 0]
@@ -335,10 +314,12 @@ def _integrated(p: Array, sa: Any, ct: Any, latitude: Any, rows: Any) -> Array:
     before = np.concatenate([anomaly[:1], anomaly[:-1]])
     before[starts] = anomaly[starts]
     slab = 0.5 * (anomaly + before) * step * _PASCAL_PER_DBAR
-    total = np.cumsum(slab)
-    above = (total - slab)[starts]
+    total = np.empty_like(slab)
+    # cast by cast, so that no depth depends on which casts come before
+    for first, end in zip(starts.tolist(), [*starts[1:].tolist(), p.size], strict=True):
+        np.cumsum(slab[first:end], out=total[first:end])
     # gsw wants the dynamic height anomaly: minus the integral of the anomaly of specific volume over pressure.
-    depth: Array = 0.0 - gsw.z_from_p(p, latitude, geo_strf_dyn_height=above[cast] - total)
+    depth: Array = 0.0 - gsw.z_from_p(p, latitude, geo_strf_dyn_height=0.0 - total)
     return depth
 
 
