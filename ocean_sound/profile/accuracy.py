@@ -104,6 +104,8 @@ INSTRUMENTS: Mapping[str, Accuracy] = MappingProxyType(
 )
 """Stated defaults by kind of instrument."""
 
+_USUAL = Accuracy()
+
 _PER_CENT = re.compile(r"(\d+(?:\.\d+)?)\s*(?:%|per cent|percent)", re.IGNORECASE)
 _METRES = re.compile(r"(\d+(?:\.\d+)?)\s*m(?:et(?:er|re)s?)?\b", re.IGNORECASE)
 
@@ -132,7 +134,7 @@ def accuracy_by_name(accuracy: Accuracy | str | None, attributes: Mapping[str, s
         return INSTRUMENTS[accuracy]
     stated = attributes.get("depth_uncertainty", "")
     if not stated and "fall_rate_equation" not in attributes:
-        return Accuracy()
+        return _USUAL
     usual = INSTRUMENTS["xbt"]
     share, metres = _PER_CENT.search(stated), _METRES.search(stated)
     if share is None and metres is None:
@@ -146,8 +148,11 @@ def accuracy_by_name(accuracy: Accuracy | str | None, attributes: Mapping[str, s
 
 def columns_of(accuracies: Sequence[Accuracy]) -> dict[str, NDArray[np.float64]]:
     """One column for each field, one number for each cast; NaN where it is not given."""
+    kinds = {id(accuracy): accuracy for accuracy in accuracies}  # few, of thousands of casts
+    place = {kind: index for index, kind in enumerate(kinds)}
+    of_cast = np.array([place[id(accuracy)] for accuracy in accuracies], dtype=np.int64)
     found: dict[str, Any] = {}
     for each in fields(Accuracy):
-        values = [getattr(accuracy, each.name) for accuracy in accuracies]
-        found[each.name] = np.array([np.nan if value is None else value for value in values], dtype=np.float64)
+        values = [getattr(accuracy, each.name) for accuracy in kinds.values()]
+        found[each.name] = np.array([np.nan if value is None else value for value in values], dtype=np.float64)[of_cast]
     return found

@@ -20,8 +20,8 @@ def total(shapes: Mapping[str, Floats], noise: Floats | None) -> Floats:
     >>> total({"a": np.array([3.0])}, np.array([4.0])).tolist()
     [5.0]
     """
-    squares = [shape**2 for shape in shapes.values()]
-    if noise is not None:
-        squares.append(noise**2)
-    found: Floats = np.sqrt(np.sum(squares, axis=0))
+    squares = np.zeros(())
+    for share in (*shapes.values(), *([] if noise is None else [noise])):
+        squares = squares + share**2
+    found: Floats = np.sqrt(squares)
     return found

@@ -40,22 +40,35 @@ class Doubt:
 
     def __init__(self, levels: Levels, accuracy: Mapping[str, Floats], speed: Floats) -> None:
         self.levels, self.speed = levels, speed
-        self.direct = levels.spread(levels.direct)
-        self.accuracy = {name: levels.spread(column) for name, column in accuracy.items()}
+        self._accuracy = accuracy
+        self.added = np.flatnonzero(levels.level < 0)  # levels at the surface
 
     def shapes(self) -> tuple[dict[str, Floats], Floats]:
         """Every shape that any of the casts has, and the noise."""
-        shapes = self._of_direct() if self.direct.any() else {}
-        squares = np.where(self.direct, self._noise("sound_speed", np.ones(self.speed.size)) ** 2, 0.0)
-        if not self.direct.all():
+        levels, nothing = self.levels, np.zeros(self.speed.size)
+        if not nothing.size:
+            return {}, nothing
+        shapes: dict[str, Floats] = {}
+        squares = nothing
+        if levels.direct.any():
+            shapes |= self._of_direct()
+            own = self._noise("sound_speed", np.ones(self.speed.size))
+            squares = levels.either(levels.direct, own**2, nothing)
+        if not levels.direct.all():
             computed, noise = self._of_computed()
             shapes |= computed
             squares = squares + noise**2
-        by_pressure = self.levels.spread(self.levels.by_pressure)
         moved, noise = self._of_vertical()
-        shapes["pressure"] = np.where(by_pressure, moved, 0.0)
-        shapes["depth"] = np.where(by_pressure, 0.0, moved)
-        return {name: shape for name, shape in shapes.items() if np.any(shape != 0.0)}, np.sqrt(squares + noise**2)
+        shapes["pressure"] = levels.either(levels.by_pressure, moved, nothing)
+        shapes["depth"] = levels.either(levels.by_pressure, nothing, moved)
+        return {name: shape for name, shape in shapes.items() if shape.any()}, np.sqrt(squares + noise**2)
+
+    def accuracy(self, name: str) -> Floats:
+        """An accuracy on each level; a single number where it is the same for all casts."""
+        column = self._accuracy[name]
+        if (column == column[:1]).all() or np.isnan(column).all():
+            return column[:1]
+        return self.levels.spread(column)
 
     def _stated(self, name: str, usual: Floats) -> Floats:
         """Uncertainty of a variable as the cast states it on a level, else the usual one."""
@@ -73,7 +86,15 @@ class Doubt:
         return np.where(level >= 0, own, CARRIED_UP).astype(np.int8)
 
     def _split(self, name: str, usual: Floats, carried: Floats) -> tuple[Floats, Floats]:
-        """Uncertainty of a variable from calibration, and from having been filled in."""
+        """Uncertainty of a variable from calibration, and from having been filled in.
+
+        `usual` is that of the sensor; `carried` that of the way up, for the levels added at the surface.
+        """
+        block, top = self.levels.block, self.added
+        if name not in block.origins and name not in block.uncertainties:
+            filled = np.zeros(self.speed.size)
+            filled[top] = carried
+            return usual, filled
         origin = self._origin(name)
         own = origin == AS_MEASURED
         stated = self._stated(name, np.where(own, usual, np.nan))
@@ -81,73 +102,84 @@ class Doubt:
         sensor = np.where(own, stated, np.where((origin == CARRIED_UP) | (origin == CARRIED_DOWN), usual, 0.0))
         filled = np.where(own | np.isnan(stated), 0.0, stated)
         # a level added at the surface has all doubts of the level below it, and that of the way up
-        top = np.flatnonzero(self.levels.level < 0)
-        sensor[top], filled[top] = sensor[top + 1], np.hypot(filled[top + 1], carried[top])
+        sensor[top], filled[top] = sensor[top + 1], np.hypot(filled[top + 1], carried)
         return sensor, filled
 
     def _noise(self, name: str, slope: Floats) -> Floats:
         """Noise of a variable on the levels where it was measured, as speed."""
-        measured = self._origin(name) == AS_MEASURED
-        noise: Floats = np.where(measured, self.accuracy[f"{name}_noise"] * np.abs(slope), 0.0)
+        noise: Floats = self.accuracy(f"{name}_noise") * np.abs(slope)
+        if name in self.levels.block.origins:
+            return np.where(self._origin(name) == AS_MEASURED, noise, 0.0)
+        noise[self.added] = 0.0
         return noise
 
     def _carried_up(self) -> tuple[Floats, Floats]:
         """Uncertainty of temperature and salinity of levels added at the surface: that of the way up."""
-        level = self.levels.level
-        distance = np.zeros(level.size)
-        top = np.flatnonzero(level < 0)
-        distance[top] = self.levels.columns["depth"][top + 1]
-        return carried_up_uncertainty(distance)
+        return carried_up_uncertainty(self.levels.columns["depth"][self.added + 1])
 
     def _of_direct(self) -> dict[str, Floats]:
+        levels, nothing = self.levels, np.zeros(self.speed.size)
         carried = np.hypot(*(slope * up for slope, up in zip(_SLOPES, self._carried_up(), strict=True)))
-        sensor, filled = self._split("sound_speed", self.accuracy["sound_speed"], carried)
+        sensor, filled = self._split("sound_speed", self.accuracy("sound_speed"), carried)
         return {
-            "sound_speed": np.where(self.direct, sensor, 0.0),
-            "completion_sound_speed": np.where(self.direct, filled, 0.0),
+            "sound_speed": levels.either(levels.direct, sensor + nothing, nothing),
+            "completion_sound_speed": levels.either(levels.direct, filled, nothing),
         }
 
     def _of_computed(self) -> tuple[dict[str, Floats], Floats]:
-        levels, computed = self.levels, ~self.direct
+        levels, nothing = self.levels, np.zeros(self.speed.size)
         error = levels.equation.standard_error
-        equation = np.where(levels.outside(), np.nan, np.nan if error is None else error)
+        equation = np.full(self.speed.size, np.nan if error is None else error)
+        equation[levels.outside()] = np.nan
         warm, salty = self._slope("temperature"), self._slope("salinity")
         carried = self._carried_up()
-        temperature, warmer = self._split("temperature", self.accuracy["temperature"], carried[0])
-        own = np.where(np.isnan(self.accuracy["salinity"]), SALINITY_UNCERTAINTY, self.accuracy["salinity"])
-        assumed = np.where(np.isnan(self.accuracy["salinity"]), ASSUMED_SALINITY_UNCERTAINTY, self.accuracy["salinity"])
+        temperature, warmer = self._split("temperature", self.accuracy("temperature"), carried[0])
+        own, assumed = self._of_salt(SALINITY_UNCERTAINTY), self._of_salt(ASSUMED_SALINITY_UNCERTAINTY)
         salinity, saltier = self._split("salinity", own, carried[1])
-        dry, cells = levels.spread(levels.dry), levels.spread(levels.from_conductivity)
-        conductivity = salty * np.where(cells, own, 0.0)
-        known = cells & np.isfinite(self.accuracy["conductivity"])
+        dry, cells = levels.dry, levels.from_conductivity
+        conductivity = levels.either(cells, salty * own, nothing)
+        known = cells & np.isfinite(self._accuracy["conductivity"])
         if known.any():
-            conductivity = np.where(known, self._slope("conductivity") * self.accuracy["conductivity"], conductivity)
+            moved = self._slope("conductivity") * self.accuracy("conductivity")
+            conductivity = levels.either(known, moved, conductivity)
+        if dry.any():
+            lacking = assumed + nothing
+            lacking[self.added] = np.hypot(lacking[self.added], carried[1])
+            saltier = levels.either(dry, lacking, saltier)
         shapes = {
             "equation": equation,
             "temperature": warm * temperature,
-            "salinity": np.where(dry | cells, 0.0, salty * salinity),
+            "salinity": levels.either(dry | cells, nothing, salty * salinity),
             "conductivity": conductivity,
             "completion_temperature": warm * warmer,
-            "completion_salinity": salty * np.where(dry, np.hypot(assumed, carried[1]), saltier),
+            "completion_salinity": salty * saltier,
         }
-        noise = np.hypot(self._noise("temperature", warm), np.where(dry, 0.0, self._noise("salinity", salty)))
-        return {name: np.where(computed, shape, 0.0) for name, shape in shapes.items()}, np.where(computed, noise, 0.0)
+        noise = np.hypot(self._noise("temperature", warm), levels.either(dry, nothing, self._noise("salinity", salty)))
+        return {name: levels.either(levels.direct, nothing, shape) for name, shape in shapes.items()}, levels.either(
+            levels.direct, nothing, noise
+        )
+
+    def _of_salt(self, usual: float) -> Floats:
+        stated = self.accuracy("salinity")
+        return np.where(np.isnan(stated), usual, stated)
 
     def _slope(self, name: str) -> Floats:
         """Derivative of the speed as the cast gives it: by temperature or pressure at constant conductivity, say."""
         step, rows = _STEPS[name], self._some
-        slope = (self.levels.moved(rows=rows, **{name: step}) - self.speed[rows]) / step
+        slope = (self.levels.moved(rows, **{name: step}) - self.speed[rows]) / step
         return np.interp(np.arange(self.speed.size), rows, slope)
 
     @cached_property
     def _some(self) -> NDArray[np.int64]:
         """Levels at which slopes are taken, the first and last of each cast among them; between, slopes are linear."""
         sizes = self.levels.row_size
-        rows = [
-            start + np.unique(np.linspace(0, size - 1, min(size, SLOPE_LEVELS)).astype(np.int64))
-            for start, size in zip((np.cumsum(sizes) - sizes).tolist(), sizes.tolist(), strict=True)
+        within = {
+            size: np.unique(np.linspace(0, size - 1, min(size, SLOPE_LEVELS)).astype(np.int64))
+            for size in set(sizes.tolist())
             if size
-        ]
+        }
+        starts = np.cumsum(sizes) - sizes
+        rows = [start + within[size] for start, size in zip(starts.tolist(), sizes.tolist(), strict=True) if size]
         return np.concatenate(rows) if rows else np.empty(0, dtype=np.int64)
 
     def _of_vertical(self) -> tuple[Floats, Floats]:
@@ -159,49 +191,59 @@ class Doubt:
         downward: over a layer thinner than d, the gradient at the level would say nothing of it.
         """
         levels = self.levels
-        vertical = np.where(levels.spread(levels.by_pressure), levels.columns["pressure"], levels.columns["depth"])
-        usual = np.where(self.direct, 0.0, PRESSURE_UNCERTAINTY)
-        stated = np.where(np.isnan(self.accuracy["pressure"]), usual, self.accuracy["pressure"])
-        stated = np.maximum(stated, self.accuracy["pressure_fraction"] * vertical)
-        by_name = {name: self._stated(name, stated) for name in ("pressure", "depth")}
-        move = np.where(levels.spread(levels.by_pressure), by_name["pressure"], by_name["depth"])
+        columns, by_pressure, nothing = levels.columns, levels.by_pressure, np.zeros(self.speed.size)
+        vertical = levels.either(by_pressure, columns["pressure"], columns["depth"])
+        stated = self.accuracy("pressure")
+        if np.isnan(stated).any():
+            usual = levels.either(levels.direct, 0.0, PRESSURE_UNCERTAINTY)
+            stated = np.where(np.isnan(stated), usual, stated)
+        fraction = self.accuracy("pressure_fraction")
+        stated = np.maximum(stated, fraction * vertical) if fraction.any() else stated + nothing
+        move = levels.either(by_pressure, *(self._stated(name, stated) for name in ("pressure", "depth")))
         # The surface is where it is; what was put there is uncertain by other means.
-        move = np.where(levels.level < 0, 0.0, move)
+        move[self.added] = 0.0
         if not move.any():
-            return np.zeros(move.size), np.zeros(move.size)
+            return nothing, nothing
         down, up = self._changes(vertical, np.maximum(move, 1e-9))
         size = np.sqrt(0.5 * (down**2 + up**2))
-        sign = np.where(down - up > 0.0, -1.0, 1.0)
-        noise = np.divide(size * self.accuracy["pressure_noise"], move, out=np.zeros(move.size), where=move > 0.0)
-        measured = move > 0.0
-        return np.where(measured, sign * size, 0.0), np.where(measured & ~self.direct, noise, 0.0)
+        shape = np.where(down > up, -size, size)
+        noise = np.divide(size * self.accuracy("pressure_noise"), move, out=np.zeros(move.size), where=move > 0.0)
+        shape[move <= 0.0] = 0.0
+        return shape, levels.either(levels.direct, nothing, noise)
 
     def _changes(self, vertical: Floats, move: Floats) -> tuple[Floats, Floats]:
         """Change of the water's share in the speed from each level to `move` below it and `move` above it."""
-        levels = self.levels
-        step = self._pressure_steps()
-        down, up = np.zeros(self.speed.size), np.zeros(self.speed.size)
-        stop = 0
+        sizes = self.levels.row_size
+        water, deeper, higher = self._pressure_effect(), vertical + move, vertical - move
+        np.subtract(self.speed, water, out=water)
+        below, above = np.empty(self.speed.size), np.empty(self.speed.size)
+        ends = np.cumsum(sizes)
         # Cast by cast, so that no number depends on which other casts are in the block.
-        for size in levels.row_size.tolist():
-            rows, stop = slice(stop, stop + size), stop + size
-            if not size:
-                continue
-            place, d = vertical[rows], move[rows]
-            water = self.speed[rows] - np.concatenate(([0.0], np.cumsum(step[rows][1:])))
-            below = np.interp(place + d, place, water) - water
-            above = np.interp(place - d, place, water) - water
-            # where the cast ends, the change on its other side must serve for both
-            over_top, over_bottom = place - d < place[0], place + d > place[-1]
-            down[rows] = np.where(over_bottom & ~over_top, -above, below)
-            up[rows] = np.where(over_top & ~over_bottom, -below, above)
-        return down, up
+        for first, end in zip((ends - sizes).tolist(), ends.tolist(), strict=True):
+            if first < end:
+                own = slice(first, end)
+                below[own] = np.interp(deeper[own], vertical[own], water[own])
+                above[own] = np.interp(higher[own], vertical[own], water[own])
+        below -= water
+        above -= water
+        # where the cast ends, the change on its other side must serve for both
+        filled = sizes > 0
+        top, bottom = vertical[(ends - sizes)[filled]], vertical[ends[filled] - 1]
+        over_top = higher < np.repeat(top, sizes[filled])
+        over_bottom = deeper > np.repeat(bottom, sizes[filled])
+        down = np.where(over_bottom & ~over_top, -above, below)
+        return down, np.where(over_top & ~over_bottom, -below, above)
 
-    def _pressure_steps(self) -> Floats:
-        """How much of the change of speed from the level before pressure alone has made; of no use on a first level."""
-        kind = self.levels.equation.vertical
-        if kind == "none" or self.direct.all():
-            return np.zeros(self.speed.size)
+    def _pressure_effect(self) -> Floats:
+        """How much of the change of speed from the first level of a cast pressure alone has made."""
+        levels = self.levels
+        kind, effect = levels.equation.vertical, np.zeros(self.speed.size)
+        if kind == "none" or levels.direct.all():
+            return effect
         slope = self._slope("vertical")
-        step = 0.5 * (slope[1:] + slope[:-1]) * np.diff(self.levels.columns[kind])
-        return np.where(self.direct, 0.0, np.concatenate(([0.0], step)))
+        step = 0.5 * (slope[1:] + slope[:-1]) * np.diff(levels.columns[kind])
+        ends = np.cumsum(levels.row_size)
+        for first, end, direct in zip((ends - levels.row_size).tolist(), ends.tolist(), levels.direct, strict=True):
+            if not direct:
+                np.cumsum(step[first : end - 1], out=effect[first + 1 : end])
+        return effect

@@ -14,7 +14,6 @@ from ..water import (
     DEFAULT_EQUATION,
     Equation,
     assumptions,
-    depth_and_speed_of_columns,
     depth_from_density,
     find_equation,
     pressure_of_columns,
@@ -22,6 +21,7 @@ from ..water import (
     salinity_from_conductivity,
     speed_of_columns,
 )
+from ..water.batch import Batch
 from .accuracy import PRESSURE_UNCERTAINTY, SALINITY_UNCERTAINTY, Accuracy, accuracy_by_name, columns_of
 from .adding import total
 from .features import SURFACE_REACH
@@ -38,10 +38,10 @@ if TYPE_CHECKING:
 
     Floats = NDArray[np.float64]
 
-_USABLE_FLAGS = (1, 2)
-_SUSPECT = 3
+_PASS, _NOT_EVALUATED, _SUSPECT = 1, 2, 3
 _LEVELS_NEEDED = 2
-_ALL = slice(None)
+# From so many casts on TEOS-10 is computed by compiled kernels, which take longer to load than a few casts by gsw.
+_MANY = 16
 _VARIABLES = ("pressure", "depth", "temperature", "salinity", "conductivity", "sound_speed")
 # What sea or lake water can be at all; beyond it a value is a fault of the instrument, whatever its flag says.
 _POSSIBLE = {
@@ -153,6 +153,7 @@ def speeds_of_block(
     salinity: float | None = None,
     use_suspect: bool = False,
     accuracy: Accuracy | str | None = None,
+    compiled: bool | None = None,
 ) -> SpeedColumns:
     """Depth, sound speed and its uncertainty for every usable level of many casts at once.
 
@@ -165,6 +166,9 @@ def speeds_of_block(
     accuracy : Accuracy or str, optional
         Uncertainties of the measurements, or the kind of instrument; where not given, for each cast by what it says of
         itself: those of an expendable probe, else those of the Argo programme.
+    compiled : bool, optional
+        Whether the speed by `teos10` is computed by compiled kernels, which takes a sixth of the time but 0.3 s to
+        load; by default from 16 casts on. The numbers are the same.
 
     Returns
     -------
@@ -190,6 +194,8 @@ def speeds_of_block(
         raise InputError(f"salinity is {salinity:g}; a practical salinity from {low:g} to {high:g} would be right")
     accuracies = [accuracy_by_name(accuracy, attributes) for attributes in block.attributes]
     levels = Levels(block, chosen, salinity, use_suspect=use_suspect)
+    if chosen.name == "teos10" and (len(block) >= _MANY if compiled is None else compiled):
+        levels.batch = Batch(block.latitude, block.longitude)
     levels.choose()
     levels.arrange()
     levels.place()
@@ -224,66 +230,93 @@ class Levels:
         self.notes: list[list[str]] = [[] for _ in block.id]
         self.reasons = [""] * len(block)
         self.suspects = np.zeros(len(block), dtype=int)
-        flags = (*_USABLE_FLAGS, _SUSPECT) if use_suspect else _USABLE_FLAGS
-        self.columns = {name: self._usable(name, flags) for name in _VARIABLES}
-        self.has = {name: self._any(np.isfinite(column)) for name, column in self.columns.items()}
+        self.columns: dict[str, Floats] = {}
+        self.has: dict[str, NDArray[np.bool_]] = {}
+        for name in _VARIABLES:
+            self._take_usable(name, _SUSPECT if use_suspect else _NOT_EVALUATED)
+        has = self.has
         # A speed that was measured is used where it can't be computed from what was measured with it.
-        wet = self.has["salinity"] | self.has["conductivity"]
-        self.direct = self.has["sound_speed"] & ~(self.has["temperature"] & wet)
-        self.by_pressure = self.has["pressure"] & ~(self.direct & self.has["depth"])
-        self.from_conductivity = self.has["conductivity"] & ~self.has["salinity"] & ~self.direct
+        wet = has["salinity"] | has["conductivity"]
+        self.direct = has["sound_speed"] & ~(has["temperature"] & wet)
+        self.by_pressure = has["pressure"] & ~(self.direct & has["depth"])
+        self.from_conductivity = has["conductivity"] & ~has["salinity"] & ~self.direct
+        self.batch: Batch | None = None
 
-    def _usable(self, name: str, flags: tuple[int, ...]) -> Floats:
-        """A copy of a column with NaN for every value that may not be used."""
+    def _take_usable(self, name: str, worst: int) -> None:
+        """A column with NaN for every value that may not be used, and which casts have any."""
         column = self.block.values.get(name)
         if column is None:
-            return np.full(int(self.block.starts[-1]), np.nan)
+            self.columns[name] = _nothing(int(self.block.starts[-1]))
+            self.has[name] = np.zeros(len(self.block), dtype=bool)
+            return
         low, high = _POSSIBLE[name]
         usable = (column >= low) & (column <= high)
         flag = self.block.flags.get(name)
         if flag is not None:
-            if _SUSPECT not in flags:
-                suspect = (usable & (flag == _SUSPECT)).astype(int)
-                self.suspects += np.add.reduceat(suspect, self.block.starts[:-1])
-            usable &= np.isin(flag, flags)
-        return np.where(usable, column, np.nan)
-
-    def _any(self, mask: NDArray[np.bool_]) -> NDArray[np.bool_]:
-        return np.logical_or.reduceat(mask, self.block.starts[:-1])
+            if worst < _SUSPECT:
+                suspect = usable & (flag == _SUSPECT)
+                if suspect.any():
+                    self.suspects += np.add.reduceat(suspect.astype(int), self.block.starts[:-1])
+            usable &= (flag >= _PASS) & (flag <= worst)
+        self.columns[name] = column if usable.all() else np.where(usable, column, np.nan)
+        self.has[name] = np.logical_or.reduceat(usable, self.block.starts[:-1])
 
     def spread(self, per_cast: NDArray[Any]) -> NDArray[Any]:
         """One value for each level of what is one value for each cast."""
         return np.repeat(per_cast, self.row_size)
 
+    def either(self, per_cast: NDArray[np.bool_], yes: Any, no: Any) -> Any:
+        """On each level one of two columns, by what holds for its cast."""
+        if per_cast.all():
+            return yes
+        return np.where(self.spread(per_cast), yes, no) if per_cast.any() else no
+
+    def cast_of(self, rows: NDArray[np.int64]) -> NDArray[np.int64]:
+        """The cast to which each of some levels belongs."""
+        return np.searchsorted(np.cumsum(self.row_size), rows, side="right")
+
     def choose(self) -> None:
         """What stands for the vertical and the salinity of each cast; a reason where there can be no profile."""
         columns, has = self.columns, self.has
-        latitude = self.spread(self.block.latitude)
         depth, pressure = columns["depth"], columns["pressure"]
-        self.vertical = np.where(self.spread(self.by_pressure), pressure, depth)
-        columns["pressure"] = np.where(self.spread(self.by_pressure), pressure, pressure_of_columns(depth, latitude))
+        self.vertical = self.either(self.by_pressure, pressure, depth)
+        if not self.by_pressure.all():
+            converted = pressure_of_columns(depth, self.spread(self.block.latitude))
+            columns["pressure"] = self.either(self.by_pressure, pressure, converted)
         if self.from_conductivity.any():
-            columns["salinity"] = np.where(self.spread(self.from_conductivity), self._salinity(), columns["salinity"])
+            columns["salinity"] = self.either(self.from_conductivity, self._salinity(slice(None)), columns["salinity"])
         self.dry = ~has["salinity"] & ~has["conductivity"] & ~self.direct
         assumed = self.salinity
         if assumed is None and "salinity" not in self.equation.arguments:
             assumed = 0.0
-        if assumed is not None:
+        if assumed is not None and self.dry.any():
             columns["salinity"] = np.where(self.spread(self.dry), assumed, columns["salinity"])
-        for index in range(len(self.block)):
-            self.reasons[index] = self._reason(index, assumed)
-            if not self.reasons[index]:
-                self.notes[index] += self._choices(index, assumed, conductivity=bool(self.from_conductivity[index]))
+        place = np.isfinite(self.block.latitude), np.isfinite(self.block.longitude)
+        kinds = (*has.values(), self.direct, self.by_pressure, self.from_conductivity, self.dry, *place, self.suspects)
+        said: dict[tuple[Any, ...], tuple[str, list[str]]] = {}  # thousands of casts are of a few kinds
+        for index, kind in enumerate(zip(*(column.tolist() for column in kinds), strict=True)):
+            if kind not in said:
+                reason = self._reason(index, assumed)
+                said[kind] = reason, [] if reason else self._choices(index, assumed)
+            self.reasons[index], lines = said[kind]
+            self.notes[index] += lines
 
-    def _salinity(self, *, temperature: float = 0.0, conductivity: float = 0.0, vertical: float = 0.0) -> Floats:
-        """Salinity from conductivity, with the inputs moved by so much."""
+    def _salinity(
+        self,
+        rows: NDArray[np.int64] | slice,
+        *,
+        temperature: float = 0.0,
+        conductivity: float = 0.0,
+        vertical: float = 0.0,
+    ) -> Floats:
+        """Salinity from conductivity on some levels, with the inputs moved by so much."""
         columns = self.columns
         # In air and in fresh water the scale gives slightly negative salinities: pressure and result are held at 0.
         found: Floats = np.maximum(
             salinity_from_conductivity(
-                columns["conductivity"] + conductivity,
-                columns["temperature"] + temperature,
-                np.maximum(columns["pressure"] + vertical, 0.0),
+                columns["conductivity"][rows] + conductivity,
+                columns["temperature"][rows] + temperature,
+                np.maximum(columns["pressure"][rows] + vertical, 0.0),
             ),
             0.0,
         )
@@ -308,7 +341,7 @@ class Levels:
             )
         return ""
 
-    def _choices(self, index: int, assumed: float | None, *, conductivity: bool) -> list[str]:
+    def _choices(self, index: int, assumed: float | None) -> list[str]:
         """What was chosen for a cast, in words."""
         has = {name: bool(mask[index]) for name, mask in self.has.items()}
         by_pressure, direct = bool(self.by_pressure[index]), bool(self.direct[index])
@@ -329,7 +362,7 @@ class Levels:
             lines.append(f"pressure from depth for the standard ocean{at}")
         if direct:
             return lines
-        if conductivity:
+        if self.from_conductivity[index]:
             lines.append("salinity from conductivity (PSS-78)")
         elif self.dry[index]:
             lines.append(f"salinity assumed: {assumed:g}")
@@ -341,31 +374,47 @@ class Levels:
 
     def arrange(self) -> None:
         """Keep the usable levels of each cast, in an order that goes strictly down."""
-        columns = self.columns
+        columns, starts = self.columns, self.block.starts
+        finite = {name: np.isfinite(columns[name]) for name in ("sound_speed", "temperature", "salinity")}
+        good = self.either(self.direct, finite["sound_speed"], finite["temperature"] & finite["salinity"])
+        further = good & (self.vertical >= 0.0)
+        further[1:] &= self.vertical[1:] > self.vertical[:-1]
+        further[starts[:-1]] = (good & (self.vertical >= 0.0))[starts[:-1]]
+        whole = np.logical_and.reduceat(further, starts[:-1]) & (self.row_size >= _LEVELS_NEEDED)
+        whole &= [not reason for reason in self.reasons]
+        if whole.all():  # as most casts are
+            self.level = np.arange(starts[-1])
+            return
         direct = self.spread(self.direct)
         # The first of these that holds is why a level is left out.
         lacking = {
             "without usable pressure or depth": ~np.isfinite(self.vertical),
             "above the surface": self.vertical < 0.0,
-            "without usable sound speed": direct & ~np.isfinite(columns["sound_speed"]),
-            "without usable temperature": ~direct & ~np.isfinite(columns["temperature"]),
-            "without usable salinity": ~direct & ~np.isfinite(columns["salinity"]),
+            "without usable sound speed": direct & ~finite["sound_speed"],
+            "without usable temperature": ~direct & ~finite["temperature"],
+            "without usable salinity": ~direct & ~finite["salinity"],
         }
         why = np.select(list(lacking.values()), list(range(len(lacking))), default=len(lacking))
-        names = [*lacking, "not below the levels before"]
-        kept: list[NDArray[np.int64]] = []
-        for index, (start, stop) in enumerate(zip(self.block.starts[:-1], self.block.starts[1:], strict=True)):
-            usable = np.flatnonzero(why[start:stop] == len(lacking)) + start
-            order, sorted_ = downward(self.vertical[usable])
-            counts = np.bincount(why[start:stop], minlength=len(names)).tolist()[: len(lacking)]
-            lost = {name: count for name, count in zip(lacking, counts, strict=True) if count}
-            if usable.size > order.size:
-                lost[names[-1]] = usable.size - order.size
-            self._account(index, int(stop - start), order.size, lost, sorted_=sorted_)
-            kept.append(usable[order] if not self.reasons[index] else usable[:0])
-        self.level = np.concatenate(kept) if kept else np.empty(0, dtype=np.int64)
-        self.columns = {name: column[self.level] for name, column in columns.items()}
+        kept = [
+            np.arange(start, stop) if all_of_it else self._kept(index, start, why[start:stop], list(lacking))
+            for index, (start, stop, all_of_it) in enumerate(
+                zip(starts[:-1].tolist(), starts[1:].tolist(), whole.tolist(), strict=True)
+            )
+        ]
+        self.level = np.concatenate(kept)
+        self.columns = {name: _picked(column, self.level) for name, column in columns.items()}
         self.row_size = np.array([rows.size for rows in kept], dtype=np.int64)
+
+    def _kept(self, index: int, start: int, why: NDArray[Any], lacking: list[str]) -> NDArray[np.int64]:
+        """The usable levels of a cast that isn't usable as it is; it is told why not."""
+        usable = np.flatnonzero(why == len(lacking)) + start
+        order, sorted_ = downward(self.vertical[usable])
+        counts = np.bincount(why, minlength=len(lacking)).tolist()[: len(lacking)]
+        lost = {name: count for name, count in zip(lacking, counts, strict=True) if count}
+        if usable.size > order.size:
+            lost["not below the levels before"] = usable.size - order.size
+        self._account(index, why.size, order.size, lost, sorted_=sorted_)
+        return usable[order] if not self.reasons[index] else usable[:0]
 
     def _account(self, index: int, total: int, kept: int, lost: dict[str, int], *, sorted_: bool) -> None:
         """Say which levels were left out, or that too few remain."""
@@ -387,27 +436,13 @@ class Levels:
     def place(self) -> None:
         """Give every level its depth, and each cast that begins near the surface a level at the surface."""
         columns = self.columns
-        from_pressure = self.spread(self.by_pressure)
-        if self.equation.name == "teos10" and from_pressure.all() and not self.direct.any():
+        if self.batch is not None and self.by_pressure.all() and not self.direct.any():
             # The usual case, in which depth and speed share what costs most.
-            columns["depth"], columns["teos10"] = depth_and_speed_of_columns(
-                columns["pressure"],
-                columns["temperature"],
-                columns["salinity"],
-                latitude=self.spread(self.block.latitude),
-                longitude=self.spread(self.block.longitude),
-                row_size=self.row_size,
+            columns["depth"], columns["teos10"] = self.batch.depth_and_speed(
+                columns["temperature"], columns["salinity"], columns["pressure"], self.row_size
             )
-        elif from_pressure.any():
-            direct = self.spread(self.direct)
-            columns["depth"][from_pressure] = depth_from_density(
-                columns["pressure"][from_pressure],
-                np.where(direct, np.nan, columns["temperature"])[from_pressure],
-                np.where(direct, np.nan, columns["salinity"])[from_pressure],
-                latitude=self.spread(self.block.latitude)[from_pressure],
-                longitude=self.spread(self.block.longitude)[from_pressure],
-                row_size=self.row_size[self.by_pressure],
-            )
+        elif self.by_pressure.any():
+            columns["depth"] = self._depth()
         filled = np.flatnonzero(self.row_size)
         first = (np.cumsum(self.row_size) - self.row_size)[filled]
         depth = columns["depth"][first]
@@ -420,39 +455,63 @@ class Levels:
                 what = "sound speed" if self.direct[index] else "temperature and salinity"
                 self.notes[index].append(f"a level added at 0 m with the {what} of the first level ({top:.2f} m)")
         raised = (depth > 0.0) & (depth <= SURFACE_REACH)
+        if not raised.any():
+            return
         at = first[raised]
-        for name, column in columns.items():
-            value = 0.0 if name in ("depth", "pressure") else column[at]
-            columns[name] = np.insert(column, at, value)
-        self.level = np.insert(self.level, at, -1)
+        lent = np.insert(np.arange(self.level.size), at, at)  # an added level has what the one below it has
+        self.columns = {name: _picked(column, lent) for name, column in columns.items()}
+        self.level = self.level[lent]
+        added = at + np.arange(at.size)
+        self.level[added] = -1
+        self.columns["depth"][added] = self.columns["pressure"][added] = 0.0
         self.row_size = self.row_size.copy()
         self.row_size[filled[raised]] += 1
 
+    def _depth(self) -> Floats:
+        """Depth from pressure for the casts that go by it, as it was read for the others."""
+        rows, direct = self.spread(self.by_pressure), self.spread(self.direct)
+        depth = self.columns["depth"].copy()
+        depth[rows] = depth_from_density(
+            self.columns["pressure"][rows],
+            np.where(direct, np.nan, self.columns["temperature"])[rows],
+            np.where(direct, np.nan, self.columns["salinity"])[rows],
+            latitude=self.spread(self.block.latitude)[rows],
+            longitude=self.spread(self.block.longitude)[rows],
+            row_size=self.row_size[self.by_pressure],
+        )
+        return depth
+
     def moved(
         self,
+        rows: NDArray[np.int64],
         *,
         temperature: float = 0.0,
         salinity: float = 0.0,
         conductivity: float = 0.0,
         vertical: float = 0.0,
-        rows: NDArray[np.int64] | slice = _ALL,
     ) -> Floats:
-        """Speed by the equation with what was measured moved by so much; salinity follows where it was computed."""
-        name = "depth" if self.equation.vertical == "depth" else "pressure"
-        columns = self.columns
-        salt = columns["salinity"] + salinity
+        """Speed by the equation on some levels, in their order, with what was measured moved by so much.
+
+        Salinity follows where it was computed.
+        """
+        columns, cast = self.columns, self.cast_of(rows)
+        salt = columns["salinity"][rows] + salinity
         if self.from_conductivity.any() and (temperature or conductivity or vertical):
-            change = (
-                self._salinity(temperature=temperature, conductivity=conductivity, vertical=vertical) - self._salinity()
-            )
-            salt = np.where(self.spread(self.from_conductivity), salt + change, salt)
+            change = self._salinity(
+                rows, temperature=temperature, conductivity=conductivity, vertical=vertical
+            ) - self._salinity(rows)
+            salt = np.where(self.from_conductivity[cast], salt + change, salt)
+        name = "depth" if self.equation.vertical == "depth" else "pressure"
+        warmth, place = columns["temperature"][rows] + temperature, columns[name][rows] + vertical
+        if self.batch is not None:
+            return self.batch.speed(warmth, salt, place, np.bincount(cast, minlength=self.row_size.size))
         return speed_of_columns(
-            columns["temperature"][rows] + temperature,
-            salt[rows],
-            latitude=self.spread(self.block.latitude)[rows],
-            longitude=self.spread(self.block.longitude)[rows],
+            warmth,
+            salt,
+            latitude=self.block.latitude[cast],
+            longitude=self.block.longitude[cast],
             equation=self.equation,
-            **{name: columns[name][rows] + vertical},
+            **{name: place},
         )
 
     def speeds(self) -> Floats:
@@ -460,19 +519,19 @@ class Levels:
         known = self.columns.pop("teos10", None)
         if known is not None:
             added = np.flatnonzero(self.level < 0)
-            known[added] = self.moved(rows=added)
+            known[added] = self.moved(added)
             return known
-        direct = self.spread(self.direct)
-        if direct.all():
+        if self.direct.all():
             return self.columns["sound_speed"]
-        return np.where(direct, self.columns["sound_speed"], self.moved())
+        return np.asarray(self.either(self.direct, self.columns["sound_speed"], self.moved(np.arange(self.level.size))))
 
     def outside(self) -> NDArray[np.bool_]:
         """Which levels lie outside the range of the equation; a line to each cast that has some."""
         name = "depth" if self.equation.vertical == "depth" else "pressure"
-        computed = ~self.spread(self.direct)
-        inputs = {key: np.where(computed, self.columns[key], np.nan) for key in ("temperature", "salinity", name)}
-        outside: NDArray[np.bool_] = range_report(self.equation, **inputs).outside & computed
+        inputs = {key: self.either(self.direct, np.nan, self.columns[key]) for key in ("temperature", "salinity", name)}
+        outside: NDArray[np.bool_] = range_report(self.equation, **inputs).outside
+        if self.direct.any():
+            outside = outside & ~self.spread(self.direct)
         if outside.any():
             starts = np.concatenate(([0], np.cumsum(self.row_size)))
             cast = np.repeat(np.arange(self.row_size.size), self.row_size)
@@ -485,27 +544,47 @@ class Levels:
 
     def tell_basis(self, accuracies: Sequence[Accuracy]) -> None:
         """Say to each cast what its uncertainty is made of."""
-        equation, stated = self.equation, self.block.uncertainties
-        for index in np.flatnonzero(self.row_size > 0).tolist():
-            accuracy, notes = accuracies[index], self.notes[index]
+        stated = self.block.uncertainties
+        lines: dict[tuple[Any, ...], str] = {}
+        kinds = (self.direct, self.dry, self.from_conductivity, self.by_pressure)
+        for index, kind in enumerate(zip(*(column.tolist() for column in kinds), strict=True)):
+            if not self.row_size[index]:
+                continue
             if self.direct[index]:
                 rows = slice(self.block.starts[index], self.block.starts[index + 1])
                 own = "sound_speed" in stated and np.isfinite(stated["sound_speed"][rows]).any()
-                if accuracy.sound_speed is None and not own:
-                    notes.append("no uncertainty: that of the measured sound speed was not given")
+                if accuracies[index].sound_speed is None and not own:
+                    self.notes[index].append("no uncertainty: that of the measured sound speed was not given")
                 continue
-            if equation.standard_error is None:
-                notes.append(f"no uncertainty: no standard error of {equation.name} is known")
-                continue
-            usual = ASSUMED_SALINITY_UNCERTAINTY if self.dry[index] else SALINITY_UNCERTAINTY
-            salinity = usual if accuracy.salinity is None else accuracy.salinity
-            salt = f"{salinity:g} of salinity"
-            if self.from_conductivity[index] and accuracy.conductivity is not None:
-                salt = f"{accuracy.conductivity:g} S/m"
-            vertical = PRESSURE_UNCERTAINTY if accuracy.pressure is None else accuracy.pressure
-            unit = "dbar" if self.by_pressure[index] else "m"
-            share = f" or {100.0 * accuracy.pressure_fraction:g} % if greater" if accuracy.pressure_fraction else ""
-            notes.append(
-                f"uncertainty (k = 1) from {equation.standard_error:g} m/s of {equation.name}, "
-                f"{accuracy.temperature:g} degC, {salt} and {vertical:g} {unit}{share}"
-            )
+            key = (id(accuracies[index]), *kind)
+            if key not in lines:
+                lines[key] = self._basis(index, accuracies[index])
+            self.notes[index].append(lines[key])
+
+    def _basis(self, index: int, accuracy: Accuracy) -> str:
+        """What the uncertainty of a computed speed is made of, in words."""
+        equation = self.equation
+        if equation.standard_error is None:
+            return f"no uncertainty: no standard error of {equation.name} is known"
+        usual = ASSUMED_SALINITY_UNCERTAINTY if self.dry[index] else SALINITY_UNCERTAINTY
+        salinity = usual if accuracy.salinity is None else accuracy.salinity
+        salt = f"{salinity:g} of salinity"
+        if self.from_conductivity[index] and accuracy.conductivity is not None:
+            salt = f"{accuracy.conductivity:g} S/m"
+        vertical = PRESSURE_UNCERTAINTY if accuracy.pressure is None else accuracy.pressure
+        unit = "dbar" if self.by_pressure[index] else "m"
+        share = f" or {100.0 * accuracy.pressure_fraction:g} % if greater" if accuracy.pressure_fraction else ""
+        return (
+            f"uncertainty (k = 1) from {equation.standard_error:g} m/s of {equation.name}, "
+            f"{accuracy.temperature:g} degC, {salt} and {vertical:g} {unit}{share}"
+        )
+
+
+def _nothing(size: int) -> Floats:
+    """A column without any value, which takes no room."""
+    return np.broadcast_to(np.float64(np.nan), size)
+
+
+def _picked(column: Floats, rows: NDArray[np.int64]) -> Floats:
+    """Some levels of a column."""
+    return _nothing(rows.size) if column.strides == (0,) else column.take(rows)

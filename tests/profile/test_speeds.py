@@ -341,6 +341,33 @@ class TestBlock:
         assert [bool(reason) for reason in columns.reasons] == [False, False, True, False, False]
         assert columns.row_size.tolist() == [7, 3, 0, 3, 3]
 
+    @pytest.mark.kernels
+    @pytest.mark.parametrize("kind", ["all", "by pressure", "by depth"])
+    def test_compiled_or_not_the_numbers_are_the_same(self, kind):
+        """gsw and the kernels do the same operations in the same order."""
+        casts = {"all": self.casts, "by pressure": self.casts[:1] * 3, "by depth": self.casts[3:4] * 2}[kind]
+        block = CastBlock.from_casts(casts)
+        plain, compiled = (speeds_of_block(block, salinity=35.0, compiled=choice) for choice in (False, True))
+        for name in ("depth", "speed", "uncertainty", "noise"):
+            ours, theirs = getattr(compiled, name), getattr(plain, name)
+            # a slope is a difference over a hundredth of a degree, so rounding counts a hundredfold
+            np.testing.assert_allclose(ours, theirs, rtol=1e-13, atol=1e-11, equal_nan=True, err_msg=name)
+        assert compiled.notes == plain.notes
+
+    @pytest.mark.kernels
+    def test_many_casts_are_compiled_and_equal_one_by_one(self):
+        casts = [
+            make_cast(pressure=PRESSURE + shift, temperature=TEMPERATURE - shift / 10.0, salinity=SALINITY)
+            for shift in np.linspace(0.0, 4.0, 20)
+        ]
+        columns = speeds_of_block(CastBlock.from_casts(casts))
+        for index, cast in enumerate(casts):
+            one, many = Profile.from_cast(cast), columns.profile(index)
+            assert many.depth == pytest.approx(one.depth, rel=1e-13)
+            assert many.speed == pytest.approx(one.speed, rel=1e-13)
+            assert many.uncertainty == pytest.approx(one.uncertainty, abs=1e-11)
+            assert many.notes == one.notes
+
     def test_levels_point_back_into_the_block(self):
         block = CastBlock.from_casts(self.casts)
         columns = speeds_of_block(block)
