@@ -27,6 +27,7 @@ _LF, _CR, _BLANK, _HASH, _PERCENT, _PLUS, _MINUS = 10, 13, 32, 35, 37, 43, 45
 _ZERO, _NINE, _UPPER_E, _LOWER_E = 48, 57, 69, 101
 _POWERS = 10.0 ** np.arange(23)
 _SHORT = 15  # characters of digits and point, so that the integer is exact
+_MOST_MISSES = 8  # rows of something else, after which rows of plain numbers are no longer hoped for
 _MOST_DIGITS, _EXACT, _LARGEST_POWER = 18, 2**53, 22
 _SPLIT = 134217729.0  # 2**27 + 1, which parts a float64 into two halves
 _ERROR = 2.0**-95  # relative; the arithmetic of two floats errs by less than 2**-100
@@ -159,6 +160,48 @@ def _short_number(data, begin, size, delimiter, point):
 
 
 @kernel
+def _plain_rows(data, begin, delimiter, point, kinds, numbers, row):
+    """Read rows of short numbers and nothing else, one mark after another.
+
+    Returned are the place behind the last such row and the place for the next level; the arguments are as for
+    `parse_rows`.
+    """
+    size, width, capacity = data.size, kinds.size, numbers.shape[1]
+    after, start, dot, column, negative, whole = begin, begin, -1, 0, False, np.int64(0)
+    for at in range(begin, size):
+        mark = np.int64(data[at])
+        digit = mark - _ZERO
+        if 0 <= digit <= 9:
+            whole = whole * 10 + digit
+        elif mark == point and dot < 0:
+            dot = at
+        elif mark in (delimiter, _LF):
+            length, places = at - start, 0
+            if dot >= 0:
+                length, places = length - 1, at - dot - 1
+            ended = mark == _LF
+            if length < 1 or length > _SHORT or column >= width or row >= capacity or ended != (column == width - 1):
+                break
+            if kinds[column] >= 0:
+                value = float(whole) / _POWERS[places]
+                numbers[kinds[column], row] = -value if negative else value
+            column, start, dot, negative, whole = column + 1, at + 1, -1, False, np.int64(0)
+            if ended:
+                column, after, row = 0, start, row + 1
+        elif mark == _MINUS and at == start and not negative:
+            negative = True
+            start += 1
+        elif mark == _BLANK and at == start and not negative:
+            start += 1
+        elif mark == _CR and at + 1 < size and data[at + 1] == _LF:
+            start += 1  # so that it does not count
+            dot += dot >= 0
+        else:
+            break
+    return after, row
+
+
+@kernel
 def _same(data, begin, end, other, other_end):
     if end - begin != other_end - other:
         return False
@@ -205,7 +248,16 @@ def parse_rows(data, begin, delimiter, point, kinds, label_kinds, numbers, row, 
     size, width = data.size, kinds.size
     capacity, most_odd, most_groups = numbers.shape[1], odd.shape[0], group_rows.size
     odds, groups, at = 0, 0, begin
+    misses = _MOST_MISSES if label_kinds.size else 0
     while at < size:
+        if misses < _MOST_MISSES:
+            first = row
+            at, row = _plain_rows(data, at, delimiter, point, kinds, numbers, row)
+            misses = 0 if row > first else misses + 1
+            if row > first and groups == 0:
+                group_rows[0], groups = first, 1
+            if at >= size:
+                break
         while at < size and data[at] == _BLANK:
             at += 1
         if at < size and (data[at] == _HASH or data[at] == _PERCENT):

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass, field
+from datetime import datetime
 from types import MappingProxyType
 from typing import TYPE_CHECKING, Any
 
@@ -36,7 +37,8 @@ AS_MEASURED, CARRIED_UP, CARRIED_DOWN, NEIGHBOUR, CLIMATOLOGY, ASSUMED = ORIGIN_
 level; a neighbouring cast; a climatology; a constant that was assumed."""
 
 NO_TIME = np.datetime64("NaT", "ns")
-_EARLIEST, _LATEST = np.datetime64("1678-01-01", "s"), np.datetime64("2262-01-01", "s")
+_EARLIEST_YEAR, _LATEST_YEAR = 1678, 2262
+_EARLIEST, _LATEST = (np.datetime64(f"{year}-01-01", "s") for year in (_EARLIEST_YEAR, _LATEST_YEAR))
 
 
 def read_only(values: Any, dtype: Any) -> NDArray[Any]:
@@ -62,7 +64,9 @@ def utc(time: Any) -> np.datetime64:
     # numpy knows no time zones: a text that says UTC by its Z says what we take it for anyway
     given = time.removesuffix("Z") if isinstance(time, str) else time
     coarse = np.datetime64(given, "s")
-    if not np.isnat(coarse) and not _EARLIEST < coarse < _LATEST:
+    moment = coarse.item()  # None, or a number where the year has five digits; compared as numpy's it takes 4 us
+    plain = isinstance(moment, datetime) and _EARLIEST_YEAR < moment.year < _LATEST_YEAR
+    if not plain and not np.isnat(coarse) and not _EARLIEST < coarse < _LATEST:
         raise ValueError(f"{time!r} does not lie between {_EARLIEST} and {_LATEST}")
     return np.datetime64(given, "ns")
 

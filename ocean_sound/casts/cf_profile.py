@@ -35,6 +35,7 @@ if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     from .block import CastBlock
+    from .levels import About
     from .origin import Origin
     from .store import Store, Variable
 
@@ -58,8 +59,69 @@ class _Found:
     notes: list[str] = field(default_factory=list)
 
 
-def read_cf(store: Store, origin: Origin, settings: Settings = _NO_SETTINGS) -> CastBlock:
-    """Read the casts of a CF netCDF file.
+@dataclass(frozen=True, eq=False)
+class CfCasts:
+    """The casts of a file as they were found: all that is taken from the file, and not yet made of it.
+
+    Parameters
+    ----------
+    where : str
+        The file, for messages.
+    raw : Raw
+    recipe : Recipe
+    about : list of About
+        For each cast that has a level.
+    empty : list of (str, str)
+        The others, and why.
+    uncertainties, origins : dict
+        Columns as long as those of `raw`.
+    labels : list of str
+        All casts, in the order of the file.
+    """
+
+    where: str
+    raw: Raw
+    recipe: Recipe
+    about: list[About]
+    empty: list[tuple[str, str]]
+    uncertainties: dict[str, NDArray[np.float64]]
+    origins: dict[str, NDArray[np.int8]]
+    labels: list[str]
+
+    @property
+    def plain(self) -> bool:
+        """Whether it is one cast without anything beside its values, which may be worked on together with others."""
+        return len(self.labels) == len(self.about) == 1 and not (self.uncertainties or self.origins)
+
+    def block(self, settings: Settings) -> CastBlock:
+        """The casts by our names, in our units.
+
+        Raises
+        ------
+        CastFileError
+            None of them is usable.
+        """
+        try:
+            block = make_block(self.raw, self.recipe, settings, self.about) if self.about else None
+        except InputError as error:
+            raise CastFileError(str(error)) from error
+        if block is None or not len(block):
+            why = block.left_out[0][1] if block is not None else "no usable level: no cast has a level"
+            raise NoUsableLevelError(f"{self.where}: {why}")
+        gone = {place for place, _ in block.left_out}
+        stays = np.repeat([one.where not in gone for one in self.about], self.raw.row_size)
+        if not (self.empty or self.uncertainties or self.origins):
+            return block
+        return replace(
+            block,
+            left_out=tuple(_in_order([*self.empty, *block.left_out], self.labels)),
+            uncertainties=_kept_rows(self.uncertainties, stays, block),
+            origins=_kept_rows(self.origins, stays, block),
+        )
+
+
+def find_cf(store: Store, origin: Origin, settings: Settings = _NO_SETTINGS) -> CfCasts:
+    """Find the casts of a CF netCDF file.
 
     Parameters
     ----------
@@ -72,8 +134,7 @@ def read_cf(store: Store, origin: Origin, settings: Settings = _NO_SETTINGS) -> 
 
     Returns
     -------
-    CastBlock
-        Casts without a level, or without one usable, are named in `left_out`.
+    CfCasts
 
     Raises
     ------
@@ -103,26 +164,15 @@ def read_cf(store: Store, origin: Origin, settings: Settings = _NO_SETTINGS) -> 
         row_size[kept],
     )
     notes = tuple(map(one_line, columns.notes))
-    recipe = Recipe(tuple(columns.heads), tuple(columns.recipe), tuple(columns.flag_recipe), {}, notes)
-    chosen = [about[index] for index in np.flatnonzero(kept)]
-    empty = [(about[index].where, "has no level") for index in np.flatnonzero(~kept)]
-    try:
-        block = make_block(raw, recipe, settings, chosen) if chosen else None
-    except InputError as error:
-        raise CastFileError(str(error)) from error
-    if block is None or not len(block):
-        why = block.left_out[0][1] if block is not None else "no usable level: no cast has a level"
-        raise NoUsableLevelError(f"{where}: {why}")
-    gone = {place for place, _ in block.left_out}
-    stays = np.repeat([one.where not in gone for one in chosen], row_size[kept])
-    left_out = _in_order([*empty, *block.left_out], labels)
-    if not (empty or columns.uncertainties or columns.origins):
-        return block
-    return replace(
-        block,
-        left_out=tuple(left_out),
-        uncertainties=_kept_rows(columns.uncertainties, rows, stays, block),
-        origins=_kept_rows(columns.origins, rows, stays, block),
+    return CfCasts(
+        where,
+        raw,
+        Recipe(tuple(columns.heads), tuple(columns.recipe), tuple(columns.flag_recipe), {}, notes),
+        [about[index] for index in np.flatnonzero(kept)],
+        [(about[index].where, "has no level") for index in np.flatnonzero(~kept)],
+        {name: column[rows] for name, column in columns.uncertainties.items()},
+        {name: column[rows] for name, column in columns.origins.items()},
+        labels,
     )
 
 
@@ -383,10 +433,8 @@ def _converted(columns: _Found, ours: str) -> bool:
     return bool(to_ours(place.name, probe, place.unit, where="", settled=True)[0][0] != 1.0)
 
 
-def _kept_rows(
-    held: dict[str, NDArray[Any]], rows: Any, stays: NDArray[np.bool_], block: CastBlock
-) -> dict[str, NDArray[Any]]:
-    return {name: column[rows][stays] for name, column in held.items() if name in block.values}
+def _kept_rows(held: dict[str, NDArray[Any]], stays: NDArray[np.bool_], block: CastBlock) -> dict[str, NDArray[Any]]:
+    return {name: column[stays] for name, column in held.items() if name in block.values}
 
 
 # --- rows ----------------------------------------------------------------------------------------------------------

@@ -7,7 +7,7 @@ variable names its own through the attribute DIMENSION_LIST. Groups other than t
 from __future__ import annotations
 
 import os
-from functools import cached_property, lru_cache
+from functools import lru_cache
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -17,6 +17,8 @@ from .classic import decoded
 from .store import Budget, Owner, Store, UnfitError, Variable
 
 if TYPE_CHECKING:
+    from collections.abc import Callable
+
     from numpy.typing import NDArray
 
 _ONLY_A_DIMENSION = "This is a netCDF dimension but not a netCDF variable"
@@ -37,6 +39,20 @@ def _held_as(kind: Any) -> tuple[np.dtype[Any], Any]:
     return kind.dtype, None
 
 
+class _Once:
+    """A property that is found out once; that of functools takes a lock each time, thirty times a file."""
+
+    def __init__(self, found: Callable[[Any], Any]) -> None:
+        self._found = found
+        self._name = found.__name__
+        self.__doc__ = found.__doc__
+
+    def __get__(self, owner: Any, kind: type | None = None) -> Any:
+        value = self._found(owner)
+        vars(owner)[self._name] = value  # from now on this is found first
+        return value
+
+
 class _Attributes(Owner):
     """Attributes are looked up again and again: what is there is listed once, what is asked for read once."""
 
@@ -45,24 +61,28 @@ class _Attributes(Owner):
         self._read: dict[str, Any] = {}
         self._texts: dict[str, str] = {}
 
-    @cached_property
-    def _there(self) -> list[str]:
+    @_Once
+    def _there(self) -> dict[str, None]:
         found: list[bytes] = []
 
         def note(name: bytes) -> None:
             found.append(name)
 
         h5a.iterate(self._place, note)
-        return [name.decode(errors="replace") for name in found]
+        return dict.fromkeys(name.decode(errors="replace") for name in found)
 
     def get(self, name: str) -> Any:
+        if name not in self._there:  # as most that are asked for
+            return None
         try:
             return self._read[name]
         except KeyError:
-            self._read[name] = found = self._value(name) if name in self._there else None
+            self._read[name] = found = self._value(name)
         return found
 
     def text(self, name: str) -> str:
+        if name not in self._there:
+            return ""
         try:
             return self._texts[name]
         except KeyError:
@@ -146,26 +166,35 @@ class _Variable(_Attributes, Variable):
         self.name = name
         self._all, self._budget = dimensions, budget
 
-    @cached_property
+    @_Once
     def _held(self) -> tuple[int, ...]:
         return tuple(self._place.shape)
 
-    @cached_property
-    def dimensions(self) -> tuple[str, ...]:  # type: ignore[override]
+    @_Once
+    def dimensions(self) -> tuple[str, ...]:
         return self._all.of(self.name, self._place, self._held)
 
-    @cached_property
-    def shape(self) -> tuple[int, ...]:  # type: ignore[override]
+    @_Once
+    def shape(self) -> tuple[int, ...]:
         sizes = self._all.sizes
         return tuple(max(sizes.get(name, size), size) for name, size in zip(self.dimensions, self._held, strict=True))
 
-    @cached_property
+    @_Once
     def _types(self) -> tuple[np.dtype[Any], Any]:
         return _held_as(self._place.get_type())
 
-    @cached_property
-    def dtype(self) -> np.dtype[Any]:  # type: ignore[override]
-        return self._types[0]
+    @_Once
+    def dtype(self) -> np.dtype[Any]:
+        found: np.dtype[Any] = self._types[0]
+        return found
+
+    @_Once
+    def ndim(self) -> int:
+        return len(self._held)
+
+    @_Once
+    def is_text(self) -> bool:
+        return self.dtype.kind in "SUO"
 
     def read(self) -> NDArray[Any]:
         self._budget.take(self.size)

@@ -5,6 +5,7 @@ from __future__ import annotations
 import os
 from dataclasses import dataclass, field, replace
 from io import FileIO
+from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -16,9 +17,10 @@ from .columns import Recipe, make_recipe
 from .layout import SEARCHED_LINES, find_table
 from .levels import About, Raw, make_block
 from .names import may_name_values
+from .origin import Origin
 from .plain_csv import cast_about, decode, finish_found, says_when
 from .preamble import Found, read_preamble
-from .reading import LARGEST_TEXT, is_plain, read_file
+from .reading import HDF5, LARGEST_TEXT, find_in_netcdf, is_plain, read_file
 from .settings import SIDECAR, Settings, settings_for
 from .table import number_of
 
@@ -170,12 +172,13 @@ class _Form:
 
 @dataclass
 class _Run:
-    """Files of one recipe that stand one after the other."""
+    """Files of one recipe that stand one after the other; those of netCDF each with what was found in it."""
 
     recipe: Recipe
     levels: int = 0
     row_size: list[int] = field(default_factory=list)
     about: list[About] = field(default_factory=list)
+    found: list[Raw] = field(default_factory=list)
 
 
 class _Reader:
@@ -211,17 +214,38 @@ class _Reader:
         parts, self._parts, self.count = self._parts, [], 0
         return _joined(parts)
 
-    def read_alone(self, path: str, settings: Settings) -> None:
+    def read_alone(self, path: str, settings: Settings, data: bytes = b"") -> None:
         """Read a file as if there were no other."""
-        for block in read_file(path, settings):
-            self._finish_run()
-            self._parts.append(block)
-            self.count += len(block)
+        for block in read_file(path, settings, data):
+            self._add(block)
+
+    def _add(self, block: CastBlock) -> None:
+        self._finish_run()
+        self._parts.append(block)
+        self.count += len(block)
 
     def read(self, path: str, data: bytes) -> None:
         """Read a file, the fast way if it can be."""
-        if not (data and self._read_alike(path, data)):
-            self.read_alone(path, self._settings)
+        if data.startswith(HDF5):
+            self._read_netcdf(path, data)
+        elif not (data and self._read_alike(path, data)):
+            self.read_alone(path, self._settings, data)
+
+    def _read_netcdf(self, path: str, data: bytes) -> None:
+        """Read netCDF-4; plain casts of one recipe are worked on together."""
+        source = os.path.basename(path)  # noqa: PTH119
+        origin = Origin(path, source, os.path.splitext(source)[0], path=Path(path), known=data)  # noqa: PTH122
+        found = find_in_netcdf(origin, self._settings, to_gather=True)
+        if isinstance(found, CastBlock):
+            self._add(found)
+            return
+        if self._run is None or not self._run.found or self._run.recipe != found.recipe:
+            self._finish_run()
+            self._run = _Run(found.recipe)
+        self._run.found.append(found.raw)
+        self._run.row_size += found.raw.row_size.tolist()
+        self._run.about += found.about
+        self.count += 1
 
     # --- the fast way ----------------------------------------------------------------------------------------------
 
@@ -427,6 +451,14 @@ class _Reader:
         if run is None or not run.row_size:
             return
         recipe = run.recipe
+        if run.found:
+            raw = Raw(
+                {key: np.concatenate([one.numbers[key] for one in run.found]) for key in run.found[0].numbers},
+                {key: np.concatenate([one.flags[key] for one in run.found]) for key in run.found[0].flags},
+                np.array(run.row_size, np.int64),
+            )
+            self._parts.append(make_block(raw, recipe, self._settings, run.about))
+            return
         columns = {column.index: self._numbers[row, : run.levels].copy() for row, column in enumerate(recipe.columns)}
         flags = {
             flag.index: self._numbers[row, : run.levels].astype(np.int8)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 from dataclasses import dataclass
+from functools import lru_cache
 
 from .cast import VARIABLES
 from .units import is_unit, quantity_of
@@ -42,7 +43,11 @@ METADATA = ("latitude", "longitude", "time", "date", "id")
 VALUES = tuple(name for name in _WORDS if name not in METADATA)
 _VALUE_WORDS = {word for word, name in _MEANING.items() if name in VALUES}
 # Without a word that holds another: whatever names a value holds one of these.
-_SHORTEST = tuple(word for word in _VALUE_WORDS if not any(other in word for other in _VALUE_WORDS - {word}))
+_SHORTEST = re.compile(
+    "|".join(
+        sorted(re.escape(word) for word in _VALUE_WORDS if not any(other in word for other in _VALUE_WORDS - {word}))
+    )
+)
 ALL_FLAGS = "flag"
 """The name of flags that hold for a whole level."""
 FLAGGED = {f"{variable}_flag": (variable,) for variable in VARIABLES} | {ALL_FLAGS: VARIABLES}
@@ -77,6 +82,7 @@ def plain_words(text: str) -> str:
     return " ".join(re.sub(r"[\s_\-/.:]+", " ", text).lower().split())
 
 
+@lru_cache(maxsize=4096)
 def meaning(text: str) -> str | None:
     """What a word at the head of a column or in a preamble stands for.
 
@@ -92,8 +98,7 @@ def may_name_values(line: str) -> bool:
     >>> may_name_values("Depth [m];Temp"), may_name_values("Latitude: 34 S")
     (True, False)
     """
-    plain = plain_words(line)
-    return any(word in plain for word in _SHORTEST)
+    return _SHORTEST.search(plain_words(line)) is not None
 
 
 def split_unit(text: str) -> tuple[str, str | None]:

@@ -31,6 +31,8 @@ class Origin:
         The file; None where the bytes are at hand.
     data : bytes
         The bytes, where there is no file.
+    known : bytes
+        What is in the file, where it was read already.
     """
 
     where: str
@@ -38,6 +40,7 @@ class Origin:
     name: str
     path: Path | None = None
     data: bytes = b""
+    known: bytes = b""
 
     def open(self) -> BinaryIO:
         """The bytes as a file, to be closed by the caller."""
@@ -50,8 +53,9 @@ class Origin:
 
     def read(self, size: int = -1) -> bytes:
         """All bytes, or the first of them."""
-        if self.path is None and size < 0:
-            return self.data
+        at_hand = self.data if self.path is None else self.known
+        if at_hand:
+            return at_hand if size < 0 else at_hand[:size]
         with self.open() as file:
             return file.read(size)
 
@@ -61,4 +65,5 @@ class Origin:
 
     def size(self) -> int:
         """Number of bytes."""
-        return len(self.data) if self.path is None else self.path.stat().st_size
+        at_hand = self.data if self.path is None else self.known
+        return len(at_hand) if self.path is None or at_hand else self.path.stat().st_size

@@ -19,11 +19,12 @@ if TYPE_CHECKING:
     from typing import Any
 
     from .cast import Cast
+    from .cf_profile import CfCasts
 
 LARGEST_TEXT = 2**27
 """Bytes of text in one file: some two million levels."""
 _CLASSIC = (b"CDF\x01", b"CDF\x02", b"CDF\x05")
-_HDF5 = b"\x89HDF\r\n\x1a\n"
+HDF5 = b"\x89HDF\r\n\x1a\n"
 _ZIP = (b"PK\x03\x04", b"PK\x05\x06")
 _UTF16 = (b"\xff\xfe", b"\xfe\xff")
 _PACKED = {b"\x1f\x8b": "gzip", b"BZh": "bzip2", b"\xfd7zXZ": "xz"}
@@ -73,15 +74,15 @@ def read_blocks(
     return read_file(path, settings_for(path, mapping, settings))
 
 
-def read_file(path: str | PathLike[str], settings: Settings) -> Iterator[CastBlock]:
-    """The same with settings that are known; for files that come by the thousand."""
+def read_file(path: str | PathLike[str], settings: Settings, known: bytes = b"") -> Iterator[CastBlock]:
+    """The same with settings and, where it was read already, content that are known; for files by the thousand."""
     path = Path(path)
     where = str(path)
     if path.is_dir():
         raise CastFileError(f"{where}: is a folder; name a file in it")
     if not path.exists():
         raise CastFileError(f"{where}: no such file; check the name")
-    origin = Origin(where, path.name, path.stem, path=path)
+    origin = Origin(where, path.name, path.stem, path=path, known=known)
     head = _checked_head(origin)
     return _read(origin, head, settings)
 
@@ -136,7 +137,7 @@ def _read(origin: Origin, head: bytes, settings: Settings) -> Iterator[CastBlock
     if head.startswith(_ZIP):
         yield from read_zip(origin, lambda member: _read(member, _checked_head(member), settings))
         return
-    if head.startswith((*_CLASSIC, _HDF5)):
+    if head.startswith((*_CLASSIC, HDF5)):
         yield _read_netcdf(origin, settings)
         return
     _refuse_binary(origin, head)
@@ -157,7 +158,7 @@ def is_plain(data: bytes) -> bool:
     head = data[:HEAD_SIZE]
     return not (
         not head.strip()
-        or head.startswith(_ZIP + _CLASSIC + (_HDF5,) + _UTF16 + tuple(_PACKED))
+        or head.startswith(_ZIP + _CLASSIC + (HDF5,) + _UTF16 + tuple(_PACKED))
         or head.translate(None, _IN_TEXT)
         or _is_exchange(head)
     )
@@ -168,8 +169,14 @@ def _is_exchange(head: bytes) -> bool:
 
 
 def _read_netcdf(origin: Origin, settings: Settings) -> CastBlock:
+    found = find_in_netcdf(origin, settings, to_gather=False)
+    return found if isinstance(found, CastBlock) else found.block(settings)
+
+
+def find_in_netcdf(origin: Origin, settings: Settings, *, to_gather: bool) -> CastBlock | CfCasts:
+    """The casts of a netCDF file; `to_gather` leaves a plain one of a CF file as it was found in it."""
     from .argo import is_argo, other_argo, read_argo
-    from .cf_profile import read_cf
+    from .cf_profile import find_cf
     from .netcdf import opened
 
     with opened(origin) as store:
@@ -179,7 +186,8 @@ def _read_netcdf(origin: Origin, settings: Settings) -> CastBlock:
         kind = other_argo(store)
         if kind is not None:
             raise CastFileError(f"{origin.where}: is a file of {kind!r}, which holds no profiles")
-        return read_cf(store, origin, settings)
+        found = find_cf(store, origin, settings)
+        return found if to_gather and found.plain else found.block(settings)
 
 
 def _refuse_settings(origin: Origin, settings: Settings) -> None:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 import re
+from contextlib import suppress
 from datetime import UTC, datetime
 
 import numpy as np
@@ -26,6 +27,9 @@ _NAMED_MONTH = re.compile(
 _CLOCK = re.compile(r"^(\d{1,2}):(\d{2})(:\d{2}(?:\.\d+)?)? ?(?:([AP])\.?M\.?)?(.*)$", re.IGNORECASE)
 _LONGEST = 100  # characters of a position or a time
 _NUMBER = re.compile(r"^\d+(?:\.\d*)?$|^\.\d+$")
+# What nearly all files have, and what need not be looked at any closer.
+_DECIMAL = re.compile(r"[-+]?\d+(?:\.\d*)?", re.ASCII)
+_ISO = re.compile(r"(\d{4}-\d\d-\d\dT\d\d:\d\d(?::\d\d)?)Z?", re.ASCII)
 
 
 def read_position(text: str, kind: str, *, where: str) -> float:
@@ -55,6 +59,8 @@ def read_position(text: str, kind: str, *, where: str) -> float:
     >>> read_position("34 07.5 S", "latitude", where="demo")
     -34.125
     """
+    if len(text) <= _LONGEST and _DECIMAL.fullmatch(text) and abs(value := float(text)) <= _LIMITS[kind]:
+        return value
     upper = text.strip().upper()
     if upper in _BLANK:
         return math.nan
@@ -147,6 +153,9 @@ def read_time(text: str, *, where: str, date_order: str | None = None) -> np.dat
     >>> read_time("13/08/2015 06:38", where="demo")
     np.datetime64('2015-08-13T06:38:00.000000000')
     """
+    if match := _ISO.fullmatch(text):
+        with suppress(ValueError):  # said below
+            return utc(match[1])
     plain = " ".join(text.split())
     if plain.upper() in _BLANK:
         return NO_TIME

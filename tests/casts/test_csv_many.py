@@ -1,4 +1,4 @@
-"""Many CSVs at once: the kernel's numbers against Python's correctly rounded float, and files against one by one."""
+"""Many files at once: the kernel's numbers against Python's correctly rounded float, and files against one by one."""
 
 import math
 import subprocess
@@ -8,6 +8,7 @@ from fractions import Fraction
 
 import numpy as np
 import pytest
+import xarray as xr
 from hypothesis import given
 from hypothesis import strategies as st
 
@@ -129,6 +130,35 @@ def test_labels_part_the_casts():
     assert parse(text, [-2, 0], label_kinds=[kernels.CONSTANT])[0] == kernels.NOT_PLAIN
     both = "A,5,1\nA,5,2\nB,6,3\n"
     assert parse(both, [-2, -3, 0], label_kinds=[1, 2])[3:] == ([0, 2], [["A", "5"], ["B", "6"]])
+
+
+CELL = (
+    st.sampled_from(["1", "-2.5", " 3.25", "--4", "- 5", "6 ", "7.", ".5", ".", "-", "", "1e3", "+8", "1.2.3", "x"])
+    | DECIMAL
+)
+END = st.sampled_from(["\n", "\r\n"])
+
+
+@given(st.lists(st.tuples(st.lists(CELL, min_size=1, max_size=3), END), max_size=30), st.sampled_from(".,"))
+def test_rows_of_short_numbers_are_read_as_all_others(rows, point):
+    """A column of text in front turns the short way off, which must change nothing."""
+    lines = [";".join(cells).replace(".", point) + end for cells, end in rows]
+    short = parse("".join(lines), [0, 1], ";", point)
+    long = parse("".join(f"A;{line}" for line in lines), [-2, 0, 1], ";", point, label_kinds=[kernels.FIRST])
+    if "" in {line.strip("\r\n;") for line in lines}:
+        return  # with a label it would no longer be an empty line
+    assert short[0] == long[0]
+    assert np.array_equal(short[1], long[1], equal_nan=True)
+    assert [odd[:2] for odd in short[2]] == [odd[:2] for odd in long[2]]
+
+
+def test_short_rows_between_others():
+    rows = [f"{number},{number / 8}\n" for number in range(40)]
+    for place in (3, 4, 17, 39):
+        rows[place] = f"# a comment\n+{place},{place / 8}e0\n"
+    status, numbers, odd, groups, _ = parse("".join(rows), [0, 1])
+    assert (status, odd, groups) == (kernels.FINE, [], [0])
+    assert numbers == [[float(number) for number in range(40)], [number / 8 for number in range(40)]]
 
 
 @pytest.mark.parametrize(
@@ -386,3 +416,59 @@ def test_reading_one_file_does_not_load_the_compiler(tmp_path):
     )
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
     assert done.stdout.strip() == "[]"
+
+
+# --- netCDF --------------------------------------------------------------------------------------------------------
+
+
+def write_netcdf(path, draw, number):
+    """A CF file of one cast or two: with gaps, flags, uncertainties, other units, or nothing usable, by its number."""
+    size = int(draw.integers(2, 9))
+    shape = ("cast", "z") if number % 7 == 6 else ("z",)
+    sizes = (2, size) if len(shape) == 2 else (size,)
+    values = {
+        "pressure": np.broadcast_to(np.arange(size, dtype=float) - (0.6 if number % 5 == 4 else 0.0), sizes),
+        "temperature": draw.uniform(1.0, 20.0, sizes),
+        "salinity": draw.uniform(30.0, 36.0, sizes),
+    }
+    if number % 3 == 1:
+        values["temperature"][..., 0] = np.nan
+    if number % 8 == 3:
+        values["temperature"][:], values["salinity"][:] = np.nan, np.nan
+    about = {
+        "pressure": {"standard_name": "sea_water_pressure_due_to_sea_water", "units": "dbar"},
+        "temperature": {"standard_name": "sea_water_temperature", "units": "degree_Celsius"},
+        "salinity": {"standard_name": "sea_water_practical_salinity", "units": "1"},
+    }
+    if number % 6 == 5:
+        values["temperature"], about["temperature"]["units"] = values["temperature"] + 273.15, "K"
+    variables = {name: (shape, column, about[name]) for name, column in values.items()}
+    if number % 4 == 2:
+        meanings = {"flag_values": np.int8([1, 4]), "flag_meanings": "good bad", "standard_name": "status_flag"}
+        variables["temperature"][2]["ancillary_variables"] = "doubt"
+        variables["doubt"] = (shape, draw.choice(np.int8([1, 4]), sizes), meanings)
+    if number % 9 == 7:
+        variables["temperature_uncertainty"] = (shape, np.full(sizes, 0.01), {"units": about["temperature"]["units"]})
+    where = {"latitude": draw.uniform(-80, 80), "longitude": draw.uniform(-180, 180), "time": 86400.0 * number}
+    units = {"latitude": "degrees_north", "longitude": "degrees_east", "time": "seconds since 2020-01-01"}
+    for name, value in where.items():
+        variables[name] = (shape[:-1], np.full(sizes[:-1], value), {"standard_name": name, "units": units[name]})
+    xr.Dataset(variables, attrs={"Conventions": "CF-1.11", "featureType": "profile"}).to_netcdf(path)
+
+
+def test_netcdf_files_are_read_together_as_one_by_one(tmp_path):
+    draw = np.random.default_rng(11)
+    paths = []
+    for number in range(40):
+        paths.append(tmp_path / f"{number:02d}.nc")
+        if number % 10 == 9:
+            paths[-1].write_text("depth [m],temperature [degC]\n0,9.5\n10,8.25\n")
+        else:
+            write_netcdf(paths[-1], draw, number)
+    (tmp_path / "99.nc").write_bytes(b"\x89HDF\r\n\x1a\n and no more")
+    paths.append(tmp_path / "99.nc")
+    casts, left_out = one_by_one(paths)
+    assert len(casts) > 30
+    assert len(left_out) > 4
+    assert_same(list(read_many(paths)), casts, left_out)
+    assert_same(list(read_many(paths, casts_per_block=7)), casts, left_out)

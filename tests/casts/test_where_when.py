@@ -97,3 +97,11 @@ def test_a_time_that_numpy_would_wrap_round(text):
 def test_what_is_no_time(text):
     with pytest.raises(InputError, match="is not a time; write it as"):
         read_time(text, where="x")
+
+
+@given(st.integers(-9_000_000_000, 9_000_000_000), st.sampled_from(["", "Z"]))
+def test_the_usual_form_is_read_as_any_other(second, zone):
+    moment = np.datetime64(second, "s")
+    usual = read_time(f"{moment}{zone}", where="here")
+    assert usual == read_time(str(moment).replace("-", "/").replace("T", " "), where="here")
+    assert usual == moment
