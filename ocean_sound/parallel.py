@@ -38,7 +38,9 @@ def usable_processors() -> int:
 
 
 @contextmanager
-def workers(number: int | None = None, *, scheduler: str | None = None) -> Iterator[tuple[Executor, int]]:
+def workers(
+    number: int | None = None, *, scheduler: str | None = None, make_ready: Callable[[], None] | None = None
+) -> Iterator[tuple[Executor, int]]:
     """An executor, and how many workers it has, for as long as the block lasts.
 
     Parameters
@@ -48,6 +50,8 @@ def workers(number: int | None = None, *, scheduler: str | None = None) -> Itera
     scheduler : str, optional
         Address of a dask scheduler, such as ``tcp://10.0.0.5:8786``, whose workers do the work instead. They must have
         this package installed.
+    make_ready : callable, optional
+        Called in each local worker when it starts; it must survive pickling.
 
     Yields
     ------
@@ -72,7 +76,7 @@ def workers(number: int | None = None, *, scheduler: str | None = None) -> Itera
     if count < 1:
         raise InputError(f"{count} workers: at least one is needed")
     pool = ProcessPoolExecutor(
-        count, mp_context=get_context("spawn"), initializer=_leave_with_parent, initargs=(os.getpid(),)
+        count, mp_context=get_context("spawn"), initializer=_begin, initargs=(os.getpid(), make_ready)
     )
     try:
         yield pool, count
@@ -115,7 +119,7 @@ def _cluster(scheduler: str) -> Iterator[tuple[Executor, int]]:
             yield executor, threads
 
 
-def _leave_with_parent(parent: int) -> None:
+def _begin(parent: int, make_ready: Callable[[], None] | None) -> None:
     """Exit when the process that started this one is gone: a pool's worker would wait for work for ever."""
 
     def watch() -> None:
@@ -124,6 +128,8 @@ def _leave_with_parent(parent: int) -> None:
         os._exit(1)
 
     threading.Thread(target=watch, daemon=True).start()
+    if make_ready is not None:
+        make_ready()
 
 
 def in_order(

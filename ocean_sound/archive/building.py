@@ -21,7 +21,7 @@ from .inputs import find_inputs, in_blocks
 from .journal import Journal, digest_of, locked, opened_journal, planned
 from .layout import OWN_ATTRIBUTES, About, write_archive
 from .parts import PartFile, text_column
-from .working import Job, Settings, Stretch, finished_parts, work
+from .working import Job, Settings, Stretch, finished_parts, make_ready, work
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Iterator, Mapping, Sequence
@@ -265,7 +265,7 @@ class _Build:
             "attributes": self.attributes,
             "old": [asdict(stretch) for stretch in old],
             "old_changed": self.output.stat().st_mtime_ns if old else 0,
-            "blocks": [[asdict(entry) for entry in block] for block in blocks],
+            "blocks": [[vars(entry) for entry in block] for block in blocks],
         }
         if resume and self._complete(plan):
             return self._told(len(inputs))
@@ -334,7 +334,7 @@ class _Build:
             return
         # not more workers than jobs: each takes its time to start
         number = None if self.number is None else max(1, min(self.number, len(jobs)))
-        with pool_of(number, scheduler=self.scheduler) as (executor, count):
+        with pool_of(number, scheduler=self.scheduler, make_ready=make_ready) as (executor, count):
             yield from in_order(work, jobs, executor=executor, number=count)
 
     def _assemble(self, journal: Journal, parts: Sequence[PartFile], digest: str, files: int) -> None:

@@ -11,7 +11,7 @@ import numpy as np
 
 from ..errors import OutputError
 from ..files import CONVENTIONS, HDF5_LOCK, attributes
-from .parts import TEXT, text_column
+from .parts import AS_READ, TEXT, text_column
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Iterable, Mapping, Sequence
@@ -203,7 +203,11 @@ def _absent(variable: Any, part: PartFile, count: int) -> NDArray[Any]:
     column = np.zeros(count, dtype=variable.dtype)
     if name.endswith("_flag"):
         base = name.removesuffix("_flag")
-        column[:] = np.where(np.isfinite(part.obs(base)), 2, 9) if base in part.outline.obs else 9
+        there = np.isfinite(part.obs(base)) if base in part.outline.obs else np.zeros(count, dtype=bool)
+        column[:] = np.where(there, 2, 9)
+        if name == "depth_flag" and "pressure_flag" in part.outline.obs:  # a depth is as good as its pressure
+            computed = np.repeat(part.cast("depth_source") != AS_READ, part.cast("row_size"))
+            column = np.where(computed & there, part.obs("pressure_flag"), column)
     return column
 
 

@@ -26,6 +26,8 @@ if TYPE_CHECKING:
     LeftOut = tuple[tuple[str, str, str], ...]
 
 TEXT = "text"
+# How the depth of a cast came about: the values of `depth_source`.
+AS_READ, FROM_DENSITY, FROM_STANDARD_OCEAN = 0, 1, 2
 
 
 @dataclass(frozen=True)

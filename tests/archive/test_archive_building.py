@@ -161,7 +161,27 @@ def test_a_large_file_is_parted(tmp_path, casts, monkeypatch, invent):
     build_archive([folder], tmp_path / "a.nc", workers=0)
     monkeypatch.setattr(working, "MOST_LEVELS", 100)
     build_archive([folder], tmp_path / "b.nc", workers=0)
-    assert invent.differences(tmp_path / "a.nc", tmp_path / "b.nc", rounding=1e-12) == []
+    assert invent.differences(tmp_path / "a.nc", tmp_path / "b.nc") == []
+
+
+def test_no_value_depends_on_which_casts_are_worked_on_together(tmp_path, casts, monkeypatch, invent):
+    """Casts with flags of depth, of pressure, of both or of neither: each alone, in twos, and all at once."""
+    from ocean_sound.archive import working
+
+    folder, _ = casts
+    rows = "".join(f"{level},{12 - level / 50},35.1,{4 if level % 3 == 2 else 1}\n" for level in range(1, 40))
+    for number, of in enumerate(("depth_flag", "pressure_flag", "temperature_flag")):
+        first = "pressure [dbar]" if of == "pressure_flag" else "depth [m]"
+        head = f"# latitude: 4{number}\n# longitude: 5\n{first},temperature [degC],salinity [PSS-78],{of}\n"
+        (folder / f"c000{number}a.csv").write_text(head + rows)
+    build_archive([folder], tmp_path / "a.nc", workers=0)
+    for number, most in enumerate((1, 80, 130)):
+        monkeypatch.setattr(working, "MOST_LEVELS", most)
+        build_archive([folder], tmp_path / f"{number}.nc", workers=0)
+        assert invent.differences(tmp_path / "a.nc", tmp_path / f"{number}.nc") == []
+    with open_archive(tmp_path / "a.nc") as archive:
+        flags = {name: archive.columns(index).get("depth_flag") for index, name in enumerate(archive.column("cast_id"))}
+    assert set(flags["c0000a"]) == set(flags["c0001a"]) == {1, 4}
 
 
 def test_a_cast_that_trips_the_code_does_not_cost_the_others(tmp_path, casts, monkeypatch):
@@ -295,7 +315,7 @@ def test_appending_gives_what_one_build_would(tmp_path, casts, invent):
     built = build_archive(second, tmp_path / "a.nc", workers=0, append=True)
     assert (built.casts, built.files, len(built.left_out)) == (12, 7, 1)
     build_archive([*first, tmp_path / "diary.txt", *second], tmp_path / "b.nc", workers=0, title="Mine")
-    differ = invent.differences(tmp_path / "a.nc", tmp_path / "b.nc", rounding=1e-12)
+    differ = invent.differences(tmp_path / "a.nc", tmp_path / "b.nc")
     assert differ == ["@plan_checksum"]
     with netCDF4.Dataset(tmp_path / "a.nc") as file:
         assert len(file.history.splitlines()) == 2
