@@ -9,6 +9,7 @@ from pathlib import Path
 import pytest
 
 from ocean_sound.cli import run
+from ocean_sound.soundings.components import read_components
 
 TOP = Path(__file__).parents[1]
 FOLDER = TOP / "examples"
@@ -28,6 +29,11 @@ def test_the_template(tmp_path):
     arguments = ["cast", cast, "--thin", 0.02, "--template", FOLDER / "sounder.toml", "-o", output]
     assert run([str(argument) for argument in arguments]) == 0
     assert output.read_bytes().count(b"\r\n") > 3
+
+
+def test_the_components():
+    components = read_components(FOLDER / "boat.toml")
+    assert {part.kind for part in components} == {"vertical", "horizontal"}
 
 
 @pytest.mark.parametrize("plan", sorted(FOLDER.glob("ostray*.toml")), ids=lambda path: path.stem)

@@ -24,9 +24,9 @@ if TYPE_CHECKING:
 
 # What lies beyond can't be a measurement of anything in the sea: the default fill value of every numeric type but
 # bytes.
-_BEYOND = 1e30
+BEYOND = 1e30
 # The default fill values of integers (netCDF C library, netcdf.h); those of floats lie beyond the bound above.
-_DEFAULT_FILLS = {
+DEFAULT_FILLS = {
     "i2": -32767,
     "u2": 65535,
     "i4": -2147483647,
@@ -112,7 +112,7 @@ def floats(variable: Variable) -> NDArray[np.float64]:
     if raw.dtype.kind not in "biuf":
         raise UnfitError(f"variable {variable.name} holds text where there should be numbers")
     values = raw.astype(np.float64)
-    gone = ~(np.abs(values) <= _BEYOND)
+    gone = ~(np.abs(values) <= BEYOND)
     declared = False
     for name in ("_FillValue", "missing_value"):
         fills = variable.get(name)
@@ -124,13 +124,13 @@ def floats(variable: Variable) -> NDArray[np.float64]:
             if np.isfinite(fill):
                 # compared in the variable's own type: 99999.9 in float32 is not 99999.9 in float64
                 gone |= raw == (np.float32(fill) if raw.dtype.itemsize == 4 and raw.dtype.kind == "f" else fill)
-    if not declared and raw.dtype.str[1:] in _DEFAULT_FILLS:
-        gone |= raw == _DEFAULT_FILLS[raw.dtype.str[1:]]
+    if not declared and raw.dtype.str[1:] in DEFAULT_FILLS:
+        gone |= raw == DEFAULT_FILLS[raw.dtype.str[1:]]
     scale, offset = variable.get("scale_factor"), variable.get("add_offset")
     if scale is not None or offset is not None:
         with np.errstate(over="ignore", invalid="ignore"):
             values = values * number(variable, "scale_factor", 1.0) + number(variable, "add_offset", 0.0)
-        gone |= ~(np.abs(values) <= _BEYOND)
+        gone |= ~(np.abs(values) <= BEYOND)
     if gone.any():
         values[gone] = np.nan
     return values

@@ -12,12 +12,25 @@ import numpy as np
 from ..archive import build_archive, open_archive
 from ..casts import CastBlock, check_block, read_casts
 from ..errors import OutputError
-from ..figures import archive_figure, cast_sheet_figure, comparison_figure, fan_figure, profile_figure, save_figure
+from ..figures import (
+    archive_figure,
+    cast_sheet_figure,
+    comparison_figure,
+    fan_figure,
+    passport_figure,
+    profile_figure,
+    save_figure,
+    swath_figure,
+)
 from ..files import packaged_profile, packaged_profiles, write_csv, write_dataset, write_text
 from ..profile import Profile
 from ..rays import even_angles, find_shadow, trace_fan
-from ..soundings import compare, thin
+from ..soundings import Scales, compare, leave_one_out, thin
+from ..soundings.in_memory import correct_soundings
+from ..soundings.passport import passport_of_file
+from ..soundings.streaming import Job
 from ..water import equations, range_report, speed_of_columns
+from .survey import synthetic_survey
 from .words import CAUTIONS, NEXT, TITLE
 
 if TYPE_CHECKING:
@@ -37,6 +50,10 @@ CREDIT = "real cast from the gsw package (SCOR/IAPSO WG127, BSD-3-Clause)"
 SOUNDER_DEPTH, SWATH = 4.0, (0.0, 30.0, 45.0, 60.0, 65.0)
 # How far a beam may move when a profile is thinned, m.
 TOLERANCE = 0.005
+# How long, s, and how far, m, a cast may stand for the water of the front; where the casts of the survey go.
+FRONT_SCALES, CASTS = Scales(time=1.5 * 3600.0, length=30_000.0), "survey-casts"
+LEFT_OUT_DEPTH = 110.0
+_UNITS = {"depth": "m", "temperature": "degC", "salinity": "PSS-78"}
 SOURCE_DEPTH, DEEP_RANGE = 100.0, 80_000.0
 
 
@@ -71,13 +88,14 @@ def run_demo(folder: Path, *, replace: bool = False, progress: Callable[[str], N
     parts = []
     for told, part in (
         (
-            "1 of 5: a shelf-edge cast, checked, and its beams (the first run compiles kernels: some seconds)",
+            "1 of 6: a shelf-edge cast, checked, and its beams (the first run compiles kernels: some seconds)",
             _shelf_edge,
         ),
-        ("2 of 5: the same place later, and what that does to soundings", _hours_later),
-        ("3 of 5: a moored source in deep water, its rays and shadow zones", _deep_water),
-        ("4 of 5: a real open cast under every equation", _real_cast),
-        ("5 of 5: an archive of all casts that come with the package", _all_casts),
+        ("2 of 6: the same place later, and what that does to soundings", _hours_later),
+        ("3 of 6: a moored source in deep water, its rays and shadow zones", _deep_water),
+        ("4 of 6: a real open cast under every equation", _real_cast),
+        ("5 of 6: an archive of all casts that come with the package", _all_casts),
+        ("6 of 6: a survey across a front, corrected with the casts taken on the way", _survey),
     ):
         progress(told)
         parts.append("\n".join(part(folder)))
@@ -222,3 +240,34 @@ def _all_casts(folder: Path) -> Iterator[str]:
     yield f"   {built.casts} casts with {built.levels} levels from {built.files} files in one CF netCDF file;"
     counts = f"left out: {len(built.left_out)}, without a speed: {built.without_speed}"
     yield f"   {counts}, repeated: {len(built.duplicates)}"
+
+
+def _survey(folder: Path) -> Iterator[str]:
+    """A synthetic line across a front, corrected with the first cast and with all; the truth is known."""
+    survey = synthetic_survey(kind="front", pings=90, beams=31, max_angle=65.0, cast_every=0.75)
+    given, truth, job = survey.soundings, survey.truth, Job(survey.profiles, choice={"scales": FRONT_SCALES})
+    one = correct_soundings(given, survey.profiles[0])
+    found = correct_soundings(given, survey.profiles, scales=FRONT_SCALES)
+    for name, dataset in (("soundings", given), ("corrected", found), ("truth", truth)):
+        write_dataset(dataset, folder / f"survey-{name}.nc", replace=True)
+    (folder / CASTS).mkdir(exist_ok=True)
+    for cast in survey.casts:
+        columns = {f"{name} [{unit}]": np.round(cast.values[name], 4) for name, unit in _UNITS.items()}
+        about = {"data": INVENTED, "time": f"{cast.time}Z", "latitude": cast.latitude, "longitude": cast.longitude}
+        write_csv(folder / CASTS / f"{cast.id}.csv", columns, preamble=about | {"station": cast.id}, replace=True)
+    names = ("the first cast alone", "all casts blended")
+    picture = swath_figure(one, found, truth=truth, names=names, title="A line across a front", remark=INVENTED)
+    save_figure(picture, folder / "survey-swath.png", replace=True)
+    outer = passport_of_file(given, job, given.sizes["ping"] // 2, 0)
+    save_figure(passport_figure(outer, remark=INVENTED), folder / "survey-passport.png", replace=True)
+    yield "6. A survey line of 40 km across a front, for a survey hydrographer (invented, so the truth is known)"
+    yield f"   {found.depth.size} soundings, {len(survey.casts)} casts on the way; error of depth, rms:"
+    yield "                                 at 65 °    all beams"
+    for name, corrected in zip(names, (one, found), strict=True):
+        error = (corrected.depth - truth.depth).values
+        outermost, whole = (float(np.sqrt(np.mean(each**2))) for each in (error[:, [0, -1]], error))
+        yield f"     {name:<22} {100 * outermost:6.1f} cm   {100 * whole:6.1f} cm"
+    inside = float((abs(found.depth - truth.depth) <= found.tvu_95).mean())
+    yield f"   the truth lies within the stated TVU (95 %) of {inside:.0%} of the soundings"
+    left = leave_one_out(survey.profiles, scales=FRONT_SCALES, depth=LEFT_OUT_DEPTH, order="Special")
+    yield f"   {left.lines()[3]}"

@@ -12,11 +12,14 @@ What to look at next
    real-cast-profile.png      a real cast; real-cast-equations.csv: its speed by every equation
    deep-water-rays.nc         the same rays and shadow as CF netCDF (xarray opens it)
    archive.nc, archive.png    all casts that come with the package in one file
+   survey-swath.png           errors of a survey across a front with one cast, and with all
+   survey-passport.png        one of its soundings: ray, casts, and uncertainty by cause
 Then your own:
    ocean-sound cast YOUR-CAST.csv --check --figure sheet.png
    ocean-sound cast YOUR-CAST.csv --compare ANOTHER.csv --figure comparison.png
    ocean-sound rays YOUR-CAST.csv --source-depth 30 --max-range 10000 --shadow --figure rays.png
    ocean-sound archive build FOLDER-OF-CASTS -o archive.nc
+   ocean-sound soundings YOUR-LINE.nc --casts FOLDER-OF-CASTS -o corrected.nc
    ocean-sound speed --temperature 10 --salinity 35 --depth 100 --latitude 45"""
 
 CAUTIONS = """\

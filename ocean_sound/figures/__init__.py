@@ -9,8 +9,13 @@ from .archive import archive_figure
 from .cast_sheet import cast_sheet_figure
 from .comparison import comparison_figure
 from .fan import fan_figure
+from .interval import interval_figure
+from .orders import orders_figure
+from .passport import passport_figure
 from .profile import profile_figure
+from .refraction import refraction_figure
 from .saving import check_picture, figure_format, save_figure
+from .swath import swath_figure
 
 __all__ = [
     "archive_figure",
@@ -19,6 +24,11 @@ __all__ = [
     "comparison_figure",
     "fan_figure",
     "figure_format",
+    "interval_figure",
+    "orders_figure",
+    "passport_figure",
     "profile_figure",
+    "refraction_figure",
     "save_figure",
+    "swath_figure",
 ]

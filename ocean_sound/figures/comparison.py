@@ -68,7 +68,7 @@ def comparison_figure(comparison: xarray.Dataset, *, remark: str = "") -> Figure
     errors = _errors(comparison)
     for row, (name, title) in enumerate((("depth_error", "depth error"), ("across_track_error", "across-track error"))):
         axes = figure.add_subplot(grid[row, 2], label=title)
-        _draw_error(axes, errors, name, title)
+        draw_error(axes, errors, name, title)
     keep = "keeping sin(angle)/speed" if comparison.attrs["beams_keep"].startswith("sin") else "keeping their angle"
     heading(
         figure,
@@ -143,7 +143,8 @@ def _errors(comparison: xarray.Dataset) -> xarray.Dataset:
     )
 
 
-def _draw_error(axes: Axes, errors: xarray.Dataset, name: str, title: str) -> None:
+def draw_error(axes: Axes, errors: xarray.Dataset, name: str, title: str) -> None:
+    """Contours of an error of `refraction_errors` over angle and depth."""
     from matplotlib.ticker import MaxNLocator
 
     values: Any = np.ma.masked_invalid(errors[name].to_numpy())

@@ -177,6 +177,7 @@ def write_csv_blocks(
     *,
     replace: bool = False,
     preamble: Mapping[str, object] | None = None,
+    units: bool = True,
 ) -> None:
     """Write columns that come block by block as one table, whole or not at all, without holding it in memory.
 
@@ -186,6 +187,8 @@ def write_csv_blocks(
         As for `write_csv`.
     blocks : iterable of mapping of str to array_like, each of shape (n,)
         The same names in each.
+    units : bool
+        Whether a column named like one of the package's own has its unit put behind the name.
 
     Raises
     ------
@@ -203,7 +206,7 @@ def write_csv_blocks(
             arrays = _checked_columns(block)
             if names is None:
                 names = list(arrays)
-                file.write(",".join(_quoted(header(name)) for name in names) + "\n")
+                file.write(",".join(_quoted(header(name) if units else name) for name in names) + "\n")
             if list(arrays) != names:
                 raise InputError(f"the columns change from {', '.join(names)} to {', '.join(arrays)}")
             cells = [_cells(array, blank="nan" if len(arrays) == 1 else "") for array in arrays.values()]

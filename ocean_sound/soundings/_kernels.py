@@ -50,18 +50,18 @@ def within(tau, c1, u1, k1, g):
 
 
 @kernel
-def enter(j, t, x, k, u0, k0, side):
+def enter(j, t, x, k, u0, rise, side):
     """What is known of a beam as it enters layer j: where, when, and when, where and how steep it leaves.
 
-    State: layer; time, distance across and cosine at entry; the same at exit; whether the beam turns in the layer, at
-    the exit time then.
+    rise: k² at the transducer (negative for a beam that only exists farther down). State: layer; time, distance across
+    and cosine at entry; the same at exit; whether the beam turns in the layer, at the exit time then.
     """
     _, thickness, gradient, inverse, excess, ratio, _, _ = side
     if j >= gradient.size:
         g = gradient[gradient.size - 1]
         bends = g > 0.0 and u0 > 0.0 and k < 1.0
         return j, t, x, k, (t + atanh(k) / g if bends else inf), x, 0.0, bends
-    rest = k0 * k0 - u0 * u0 * excess[j + 1]
+    rest = rise - u0 * u0 * excess[j + 1]
     if rest <= 0.0:
         return j, t, x, k, t + atanh(min(k, 1.0)) / gradient[j], x, 0.0, True
     out = sqrt(rest)
@@ -93,12 +93,12 @@ def follow(u0, k0, times, speed, side, downs, acrosses, statuses):
         downs[i], acrosses[i], statuses[i] = nan, nan, BAD
     if not (u < 1.0 and k0 > 0.0):
         return
-    state = enter(0, 0.0, 0.0, k0, u, k0, side)
+    state = enter(0, 0.0, 0.0, k0, u, k0 * k0, side)
     for i in range(times.size):
         if not (0.0 <= times[i] < inf):
             continue
         while times[i] > state[4] and not state[7]:
-            state = enter(state[0] + 1, state[4], state[5], state[6], u, k0, side)
+            state = enter(state[0] + 1, state[4], state[5], state[6], u, k0 * k0, side)
         if times[i] > state[4]:
             statuses[i] = TURNED
             continue
@@ -122,9 +122,9 @@ def time_down(u0, k0, down, speed, side):
     u = abs(u0)
     if not (u < 1.0 and k0 > 0.0 and down >= 0.0):
         return nan, nan, BAD
-    state = enter(0, 0.0, 0.0, k0, u, k0, side)
+    state = enter(0, 0.0, 0.0, k0, u, k0 * k0, side)
     while state[0] < gradient.size and not state[7] and away[state[0] + 1] <= down:
-        state = enter(state[0] + 1, state[4], state[5], state[6], u, k0, side)
+        state = enter(state[0] + 1, state[4], state[5], state[6], u, k0 * k0, side)
     j, k = state[0], state[3]
     dz = down - away[j]
     if dz <= 0.0:
@@ -168,8 +168,8 @@ def apart(u0, k0, speed_a, side_a, speed_b, side_b, least, allowance):
     Returned: the bound, and the distance below the transducer and the time at which it is found; inf if the beam in b
     has turned and left the layer upward before.
     """
-    a = enter(0, 0.0, 0.0, k0, u0, k0, side_a)
-    b = enter(0, 0.0, 0.0, k0, u0, k0, side_b)
+    a = enter(0, 0.0, 0.0, k0, u0, k0 * k0, side_a)
+    b = enter(0, 0.0, 0.0, k0, u0, k0 * k0, side_b)
     layers_a, layers_b = side_a[2].size, side_b[2].size
     t, before = 0.0, 0.0
     largest, at, when = 0.0, 0.0, 0.0
@@ -205,11 +205,11 @@ def apart(u0, k0, speed_a, side_a, speed_b, side_b, least, allowance):
         if t >= end:
             if flattens:
                 return largest, at, when
-            a = enter(a[0] + 1, a[4], a[5], a[6], u0, k0, side_a)
+            a = enter(a[0] + 1, a[4], a[5], a[6], u0, k0 * k0, side_a)
         if t >= leaves_b and a[0] < layers_a:
             if b[7]:
                 return inf, z_a, t
-            b = enter(b[0] + 1, b[4], b[5], b[6], u0, k0, side_b)
+            b = enter(b[0] + 1, b[4], b[5], b[6], u0, k0 * k0, side_b)
     return largest, at, when
 
 

@@ -23,6 +23,7 @@ if TYPE_CHECKING:
 STATUSES = ("hit", "turned", "beyond the profile", "bad input")
 """What became of a beam, by the value of its status."""
 HIT, TURNED, BEYOND, BAD = range(4)
+_OVERSHOOT = 0.1  # of the depth: so far below the deepest level the last gradient may stand for the water
 
 
 @dataclass(frozen=True, eq=False)
@@ -165,6 +166,26 @@ def below_transducer(profile: Profile, transducer_depth: float, *, to_depth: flo
 def carried_on(water: Medium, angles: ArrayLike, times: ArrayLike, surface_speed: ArrayLike | None = None) -> Beams:
     """Positions by `beam_positions`, but those beyond the profile as if it went on at its last gradient."""
     return _carried_on(water, *_broadcast(angles, times, surface_speed, names=("angles", "times", "surface_speed")))
+
+
+def nearly_within(
+    profile: Profile,
+    angles: ArrayLike,
+    times: ArrayLike,
+    *,
+    transducer_depth: float = 0.0,
+    surface_speed: ArrayLike | None = None,
+) -> Beams:
+    """Positions by `beam_positions`; up to a tenth of the depth below the profile it goes on at its last gradient.
+
+    For beams of other water, which an error of speed alone may have put below the deepest level: they count as hit.
+    """
+    found = carried_on(below_transducer(profile, transducer_depth), angles, times, surface_speed)
+    deepest = float(profile.depth[-1])
+    near = found.depth <= deepest + _OVERSHOOT * (deepest - transducer_depth)
+    good = (found.status == HIT) | ((found.status == BEYOND) & near)
+    depth, across = (np.where(good, values, np.nan) for values in (found.depth, found.across))
+    return Beams(found.time, depth, across, np.where(good, HIT, found.status).astype(np.int8))
 
 
 def _carried_on(water: Medium, theta: Floats, times: Floats, steering: Floats | None) -> Beams:

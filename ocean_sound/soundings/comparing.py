@@ -14,7 +14,7 @@ from ..files.cf import attributes
 from ..profile import Profile
 from ..profile.speeds import speeds_of_block
 from ..water import DEFAULT_EQUATION, find_equation, pressure_of_columns, salinity_from_conductivity, speed_of_columns
-from .beams import BEYOND, HIT, STATUSES, beam_times, below_transducer, carried_on
+from .beams import HIT, STATUSES, beam_times, below_transducer, nearly_within
 
 if TYPE_CHECKING:
     import xarray
@@ -28,7 +28,6 @@ DEFAULT_ANGLES = (0.0, 30.0, 45.0, 60.0, 65.0, 70.0)
 CAUSES = ("temperature", "salinity", "pressure")
 _ANGLE, _SEABED = "angle of the beam from the vertical at the transducer", "true depth of the seabed"
 _DEPTHS = 10
-_OVERSHOOT = 0.1  # of the depth: so far below the deepest level the last gradient may stand for the water
 
 
 @dataclass(frozen=True, eq=False)
@@ -183,14 +182,12 @@ def refraction_errors(
     theta, depth = np.atleast_1d(np.asarray(angles, float)), np.atleast_1d(np.asarray(depths, float))
     truth = beam_times(true, theta[None, :], depth[:, None], transducer_depth=transducer_depth)
     steering = below_transducer(true, transducer_depth).source_speed if flat_array else None
-    found = carried_on(below_transducer(used, transducer_depth), theta[None, :], truth.time, steering)
-    near = found.depth <= used.depth[-1] + _OVERSHOOT * (used.depth[-1] - transducer_depth)
-    good = (truth.status == HIT) & ((found.status == HIT) | ((found.status == BEYOND) & near))
-    status = np.where(good, HIT, np.where(truth.status == HIT, found.status, truth.status)).astype(np.int8)
+    found = nearly_within(used, theta[None, :], truth.time, transducer_depth=transducer_depth, surface_speed=steering)
+    status = np.where(truth.status == HIT, found.status, truth.status)
     where = ("sounding_depth", "angle")
 
     def column(values: Floats, name: str, units: str) -> tuple[Any, ...]:
-        return where, np.where(good, values, np.nan), {"long_name": name, "units": units}
+        return where, np.where(status == HIT, values, np.nan), {"long_name": name, "units": units}
 
     flags = {
         "long_name": "what became of the beam",

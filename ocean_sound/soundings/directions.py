@@ -24,7 +24,9 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
+from .._numba import kernel_array
 from ..errors import InputError
+from . import _kernels_directions as kernels
 
 if TYPE_CHECKING:
     from numpy.typing import ArrayLike, NDArray
@@ -46,7 +48,9 @@ DIRECTION_STATUSES = (
     "not downward",
 )
 """What became of a direction, by the value of its status."""
-USABLE, NO_ANGLE, NO_DIRECTION, NO_SPEED, NO_ATTITUDE, NOT_AT_FACE, NOT_DOWNWARD = range(7)
+USABLE, NO_ANGLE, NO_DIRECTION = kernels.USABLE, kernels.NO_ANGLE, kernels.NO_DIRECTION
+NO_SPEED, NO_ATTITUDE = kernels.NO_SPEED, kernels.NO_ATTITUDE
+NOT_AT_FACE, NOT_DOWNWARD = kernels.NOT_AT_FACE, kernels.NOT_DOWNWARD
 
 
 @dataclass(frozen=True, eq=False)
@@ -127,7 +131,7 @@ def beam_directions(
     Returns
     -------
     Directions
-        In the broadcast shape of the arguments (columns of pings against rows of beams are cheap).
+        In the broadcast shape of the arguments.
 
     Raises
     ------
@@ -160,11 +164,9 @@ def beam_directions(
     turns = array == "flat" and steering is not None
     notes = _notes(array, turns=turns, attitude=(roll, pitch))
     if turns:
-        ratio = _ratio(c, steering)
-        forward, starboard, status = _turned(forward, starboard, status, ratio, roll, pitch)
-    forward, starboard, status = np.broadcast_arrays(forward, starboard, status)
+        forward, starboard, status = _turned(forward, starboard, status, _ratio(c, steering), roll, pitch)
     lost = status != USABLE
-    return Directions(np.where(lost, np.nan, forward), np.where(lost, np.nan, starboard), status.astype(np.int8), notes)
+    return Directions(np.where(lost, np.nan, forward), np.where(lost, np.nan, starboard), status, notes)
 
 
 def beam_angles(
@@ -260,15 +262,12 @@ def _notes(array: str, *, turns: bool, attitude: tuple[Any, Any]) -> tuple[str, 
     return tuple(f"no {name} of the face is given: it is taken as 0" for name in names)
 
 
-def _measured(across: Floats, along: Floats, angles: str) -> tuple[Floats, Floats, NDArray[Any]]:
+def _measured(across: Floats, along: Floats, angles: str) -> tuple[Floats, Floats, NDArray[np.int8]]:
     """Cosines forward and to starboard by the two angles, and the status."""
-    a, b = (np.radians(np.where(np.abs(angle) < 90.0, angle, np.nan)) for angle in (across, along))
-    starboard = np.sin(a)
-    forward = np.sin(b) if angles == "cones" else np.cos(a) * np.sin(b)
-    status = np.where(np.isnan(a) | np.isnan(b), NO_ANGLE, USABLE)
-    if angles == "cones":
-        status = np.where((status == USABLE) & (forward**2 + starboard**2 >= 1.0), NO_DIRECTION, status)
-    return forward, starboard, status
+    shape, (a, b) = _flat(across, along)
+    forward, starboard, status = np.empty(a.size), np.empty(a.size), np.empty(a.size, dtype=np.int8)
+    kernels.measure(a, b, angles != "cones", forward, starboard, status)
+    return forward.reshape(shape), starboard.reshape(shape), status.reshape(shape)
 
 
 def _ratio(speed: Floats | None, steering: Floats) -> Floats:
@@ -282,33 +281,22 @@ def _ratio(speed: Floats | None, steering: Floats) -> Floats:
 def _turned(
     forward: Floats,
     starboard: Floats,
-    status: NDArray[Any],
+    status: NDArray[np.int8],
     ratio: Floats,
     roll: Floats | None,
     pitch: Floats | None,
-) -> tuple[Floats, Floats, NDArray[Any]]:
+) -> tuple[Floats, Floats, NDArray[np.int8]]:
     """Directions after their cosines along the face have grown by a ratio, and the status."""
-    level = roll is None and pitch is None
-    if level:
-        f, s = ratio * forward, ratio * starboard
-        reasons = [(np.isnan(ratio), NO_SPEED), (f * f + s * s >= 1.0, NOT_AT_FACE)]
-    else:
-        r, q = (np.radians(np.zeros(()) if angle is None else angle) for angle in (roll, pitch))
-        sin_r, cos_r, sin_q, cos_q = np.sin(r), np.cos(r), np.sin(q), np.cos(q)
-        down = third(forward, starboard)
-        a = ratio * (cos_q * forward - sin_q * down)
-        b = ratio * (sin_r * sin_q * forward + cos_r * starboard + sin_r * cos_q * down)
-        normal = cos_r * sin_q * forward - sin_r * starboard + cos_r * cos_q * down
-        n = third(a, b)
-        f = cos_q * a + sin_r * sin_q * b + cos_r * sin_q * n
-        s = cos_r * b - sin_r * n
-        d = -sin_q * a + sin_r * cos_q * b + cos_r * cos_q * n
-        reasons = [
-            (np.isnan(ratio), NO_SPEED),
-            (np.isnan(r + q), NO_ATTITUDE),
-            ((normal <= 0.0) | (n <= 0.0), NOT_AT_FACE),
-            (d <= 0.0, NOT_DOWNWARD),
-        ]
-    for bad, reason in reasons:
-        status = np.where((status == USABLE) & bad, reason, status)
-    return f, s, status
+    r, q = (np.radians(np.zeros(()) if angle is None else angle) for angle in (roll, pitch))
+    attitude = (np.sin(r), np.cos(r), np.sin(q), np.cos(q))
+    shape, columns = _flat(forward, starboard, status, ratio, *attitude)
+    found = columns[2].astype(np.int8)
+    f, s = columns[0].copy(), columns[1].copy()
+    kernels.turn(f, s, found, *columns[3:])
+    return f.reshape(shape), s.reshape(shape), found.reshape(shape)
+
+
+def _flat(*values: Any) -> tuple[tuple[int, ...], list[Floats]]:
+    """Their common shape, and each as a column of that size."""
+    whole = np.broadcast_arrays(*values)
+    return whole[0].shape, [kernel_array(each.ravel()) for each in whole]

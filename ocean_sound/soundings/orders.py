@@ -9,12 +9,11 @@ from dataclasses import astuple, dataclass, fields
 from functools import lru_cache
 from importlib.resources import as_file, files
 from types import MappingProxyType
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, NamedTuple
 
 import numpy as np
 
 from ..errors import InputError
-from ..water._arrays import float_array
 from ._arguments import checked_array, given_back, together
 
 if TYPE_CHECKING:
@@ -33,9 +32,6 @@ SWATH_NOTE = (
     "an error of sound speed is shared by the whole swath and by all that one cast serves: it does not average out "
     "over soundings, and a share of soundings that hold an order is not the chance that the survey does"
 )
-
-LIMITED_BY = ("not_limited", "tvu", "thu", "tvu_and_thu", "unknown")
-"""By its code, what ends the angles of `Reach`."""
 
 _PACKAGED = "orders.toml"
 _SOURCE = "source"
@@ -214,6 +210,87 @@ def _limits_model() -> Any:
     return Limits
 
 
+class ErrorLimits(NamedTuple):
+    """How large errors may be.
+
+    Parameters
+    ----------
+    depth, across : numpy.ndarray
+        m, at each of some depths; infinite without a limit.
+    words : str
+        Whose limits they are.
+    """
+
+    depth: Floats
+    across: Floats
+    words: str
+
+
+def error_limits(order: Order | str | None, tolerance: float | None, depth: ArrayLike) -> ErrorLimits:
+    """The largest errors by an order or a tolerance, one of which is given.
+
+    Parameters
+    ----------
+    order : Order or str, optional
+        Or the name of one of IHO S-44: an error may be as large as its TVU and THU.
+    tolerance : float, optional
+        The largest error of depth, m.
+    depth : array_like
+        m, positive down.
+
+    Returns
+    -------
+    ErrorLimits
+
+    Raises
+    ------
+    InputError
+        If both are given or neither, the order is unknown, or the tolerance is no positive number.
+
+    Examples
+    --------
+    >>> error_limits("Special", None, [10.0, 100.0]).depth.round(2)
+    array([0.26, 0.79])
+    """
+    if (order is None) == (tolerance is None):
+        raise InputError("give an order, or a tolerance in metres, and not both")
+    below = np.asarray(depth, dtype=np.float64)
+    if tolerance is not None:
+        if not (np.isfinite(tolerance) and tolerance > 0.0):
+            raise InputError(f"tolerance is {tolerance:g} m: a number above 0 would be right")
+        every, none = np.full(below.shape, float(tolerance)), np.full(below.shape, np.inf)
+        return ErrorLimits(every, none, f"a tolerance of {tolerance:g} m")
+    chosen = order if isinstance(order, Order) else named_orders([str(order)])[str(order)]
+    return ErrorLimits(np.asarray(chosen.tvu(below)), np.asarray(chosen.thu(below)), f"the TVU of order {chosen.name}")
+
+
+def named_orders(names: Iterable[str], known: Mapping[str, Order] | None = None) -> dict[str, Order]:
+    """The orders of some names, of IHO S-44 where nothing else is given.
+
+    Raises
+    ------
+    InputError
+        If a name is unknown.
+    """
+    of = read_orders() if known is None else known
+    wanted = list(names)
+    for name in wanted:
+        if name not in of:
+            raise InputError(f"order '{name}' is unknown: {', '.join(of)} are known")
+    return {name: of[name] for name in wanted}
+
+
+def limit_rows(orders: Mapping[str, Order]) -> Floats:
+    """Fixed part and share of TVU and of THU of each order, shape (orders, 4); infinite where there is no limit."""
+    rows = []
+    for order in orders.values():
+        row = []
+        for fixed, share in ((order.tvu_fixed, order.tvu_share), (order.thu_fixed, order.thu_share)):
+            row += [np.inf, 0.0] if fixed is None and share is None else [fixed or 0.0, share or 0.0]
+        rows.append(row)
+    return np.array(rows, dtype=np.float64).reshape(-1, 4)
+
+
 @dataclass(frozen=True, eq=False)
 class Held:
     """Which soundings stay within an order; arrays of one shape.
@@ -280,7 +357,7 @@ def _within(value: Floats, limit: Floats) -> tuple[Booleans, Booleans]:
     return (value <= limit) | unlimited, (value > limit) & ~unlimited
 
 
-def _share_of(value: Floats, limit: Floats) -> Floats:
+def share_of(value: Floats, limit: Floats) -> Floats:
     """Uncertainties over their limit; 0 where there is none."""
     with np.errstate(divide="ignore", invalid="ignore"):
         share = value / limit
@@ -396,7 +473,7 @@ def _summary(order: Order, depth: Floats, tvu_95: Floats, thu_95: Floats) -> Ord
     kept, both = (int(np.count_nonzero(mask)) for mask in (held.both, held.tvu_fails & held.thu_fails))
     tvu, thu = (int(np.count_nonzero(mask)) - both for mask in (held.tvu_fails, held.thu_fails))
     largest = [
-        float(np.fmax.reduce(_share_of(value, np.asarray(limit)), axis=None, initial=np.nan))
+        float(np.fmax.reduce(share_of(value, np.asarray(limit)), axis=None, initial=np.nan))
         for value, limit in ((tvu_95, order.tvu(depth)), (thu_95, order.thu(depth)))
     ]
     unknown = depth.size - kept - tvu - thu - both
@@ -432,138 +509,6 @@ def summary_dataset(summaries: Sequence[OrderSummary]) -> xarray.Dataset:
     names = np.array([each.order for each in summaries], dtype=str)
     order = ("order", names, {"long_name": "survey order"})
     return xr.Dataset(variables, coords={"order": order}, attrs={"comment": SWATH_NOTE})
-
-
-@dataclass(frozen=True, eq=False)
-class Reach:
-    """How far out, by depth, beams hold an order; arrays of one length.
-
-    Parameters
-    ----------
-    order : str
-    depth : numpy.ndarray
-        m.
-    angle : numpy.ndarray
-        The largest beam angle up to which all beams hold the order, degrees; NaN where already the first does not.
-    limited_by : numpy.ndarray of int8
-        What ends it, by its code in `LIMITED_BY`: 0 where all beams of the table hold, and 4 where an uncertainty is
-        unknown there.
-    holds_beyond : numpy.ndarray of bool
-        Whether beams farther out hold the order again: a wrong speed in a layer at the transducer, say, does not move
-        the depth at 45 degrees.
-    """
-
-    order: str
-    depth: Floats
-    angle: Floats
-    limited_by: NDArray[np.int8]
-    holds_beyond: Booleans
-
-    def to_dataset(self) -> xarray.Dataset:
-        """On the dimension `depth`, with units and meanings.
-
-        Examples
-        --------
-        >>> angles, tvu = [0.0, 40.0, 60.0], [[0.1], [0.2], [0.4]]
-        >>> reach = largest_angle(read_orders()["Special"], angles, [20.0], tvu, 0.5)
-        >>> reach.to_dataset()["largest_angle"].attrs["units"]
-        'degree'
-        """
-        import xarray as xr
-
-        codes = np.arange(len(LIMITED_BY), dtype=np.int8)
-        meanings = {"long_name": "what limits the angle", "flag_values": codes, "flag_meanings": " ".join(LIMITED_BY)}
-        angle = {"long_name": "largest beam angle up to which all beams hold the order", "units": "degree"}
-        beyond = {"long_name": "whether beams farther out hold the order again", "flag_values": codes[:2],
-                  "flag_meanings": "no yes"}  # fmt: skip
-        depth = {"long_name": "depth below the water surface", "standard_name": "depth", "units": "m",
-                 "positive": "down"}  # fmt: skip
-        return xr.Dataset(
-            {
-                "largest_angle": ("depth", self.angle, angle),
-                "limited_by": ("depth", self.limited_by, meanings),
-                "holds_beyond": ("depth", self.holds_beyond.astype(np.int8), beyond),
-            },
-            coords={"depth": ("depth", self.depth, depth)},
-            attrs={"order": self.order},
-        )
-
-
-def largest_angle(order: Order, angle: ArrayLike, depth: ArrayLike, tvu_95: ArrayLike, thu_95: ArrayLike) -> Reach:
-    """The largest beam angle that holds an order, by depth.
-
-    Parameters
-    ----------
-    order : Order
-    angle : array_like
-        Beam angles from the vertical, degrees, from 0 to less than 90, increasing. A side of the swath at a time.
-    depth : array_like
-        m, positive down.
-    tvu_95, thu_95 : array_like
-        Uncertainty (95 %) over (angle, depth), m, or what broadcasts to that; NaN where it is unknown.
-
-    Returns
-    -------
-    Reach
-        Up to that angle all beams hold, from the first on. Between the angles of the table the share of the limit is
-        taken along a straight line, which for one that grows ever faster is on the safe side; what happens within one
-        step of the table is not seen.
-
-    Raises
-    ------
-    InputError
-        If the angles or depths are not as above, an uncertainty is negative, or the tables have another shape.
-
-    Examples
-    --------
-    >>> limits = Order("channel", tvu_fixed=0.2)
-    >>> largest_angle(limits, [0.0, 30.0, 60.0], [10.0, 20.0], [[0.1, 0.1], [0.1, 0.2], [0.3, 0.4]], 0.0).angle
-    array([45., 30.])
-    """
-    theta, below = float_array("angle", angle), checked_array("depth", depth)
-    rising = theta.ndim == 1 and theta.size > 0 and bool((np.diff(theta) > 0.0).all())
-    if not (rising and 0.0 <= theta[0] <= theta[-1] < 90.0):
-        raise InputError("angle: an increasing row of degrees from 0 to less than 90 would be right")
-    if below.ndim != 1 or np.isnan(below).any():
-        raise InputError("depth: a row of finite metres would be right")
-    table = (theta.size, below.size)
-    shares = [
-        _share_of(_table(value, name, table), np.asarray(limit(below)))
-        for value, name, limit in ((tvu_95, "tvu_95", order.tvu), (thu_95, "thu_95", order.thu))
-    ]
-    (tvu_ends, tvu_unknown), (thu_ends, thu_unknown) = (_end(theta, share) for share in shares)
-    end = np.minimum(tvu_ends, thu_ends)
-    by_tvu, by_thu = (tvu_ends == end) & ~tvu_unknown, (thu_ends == end) & ~thu_unknown
-    limited_by = np.where(by_tvu | by_thu, by_tvu + 2 * by_thu, LIMITED_BY.index("unknown"))
-    limited_by[np.isposinf(end)] = 0
-    good = (shares[0] <= 1.0) & (shares[1] <= 1.0)
-    beyond: Booleans = np.asarray((good & ~np.logical_and.accumulate(good, axis=0)).any(axis=0))
-    reached = np.where(np.isneginf(end), np.nan, np.minimum(end, theta[-1]))
-    return Reach(order.name, below, reached, limited_by.astype(np.int8), beyond)
-
-
-def _end(angle: Floats, share: Floats) -> tuple[Floats, Booleans]:
-    """For each depth where the share of the limit first passes 1, and whether it is unknown there.
-
-    Minus infinity where that is the first angle, infinity where it never happens.
-    """
-    over = ~(share <= 1.0)
-    first, column = np.argmax(over, axis=0), np.arange(share.shape[1])
-    before = np.maximum(first - 1, 0)
-    inside, outside = share[before, column], share[first, column]
-    step = outside - inside
-    part = np.where(step > 0.0, (1.0 - inside) / np.where(step > 0.0, step, 1.0), 0.0)
-    end = np.where(first == 0, -np.inf, angle[before] + part * (angle[first] - angle[before]))
-    never = ~over.any(axis=0)
-    return np.where(never, np.inf, end), np.isnan(outside) & ~never
-
-
-def _table(values: ArrayLike, name: str, shape: tuple[int, int]) -> Floats:
-    array = checked_array(name, values)
-    try:
-        return np.broadcast_to(array, shape)
-    except ValueError:
-        raise InputError(f"{name}: its shape is {array.shape}; {shape} for angle and depth would be right") from None
 
 
 def _judged_on(depth: ArrayLike, tvu_95: ArrayLike, thu_95: ArrayLike) -> tuple[Floats, ...]:

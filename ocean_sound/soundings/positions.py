@@ -17,7 +17,9 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from .._numba import kernel_array
 from ..errors import InputError
+from . import _kernels_positions as kernels
 
 if TYPE_CHECKING:
     from numpy.typing import ArrayLike, NDArray
@@ -103,26 +105,28 @@ def sounding_positions(
     >>> latitude.round(6), longitude.round(6)
     (array([0.01, 0.  ]), array([ 179.99, -179.99]))
     """
-    lat = np.radians(_latitude(latitude))
-    sin_lat, cos_lat = np.sin(lat), np.cos(lat)
-    meridian, prime = _radii(sin_lat)
-    course = np.radians(np.asarray(heading, dtype=np.float64))
+    frame, one_minus_e2 = place_frame(latitude, longitude, heading, height=height)
     x, y = np.asarray(across, dtype=np.float64), np.asarray(along, dtype=np.float64)
-    north, east = np.cos(course) * y - np.sin(course) * x, np.sin(course) * y + np.cos(course) * x
-    # With s the distance and k the curvature of the section: s² k, and s² k² of the surface at its height.
-    s2k = north * north / meridian + east * east / prime
-    distance2 = north * north + east * east
-    shrink = 1.0 / (1.0 + np.asarray(height, dtype=np.float64) * s2k / np.where(distance2 > 0.0, distance2, 1.0))
-    north, east, s2k, distance2 = north * shrink, east * shrink, s2k * shrink**2, distance2 * shrink**2
-    arc2 = s2k * (s2k / np.where(distance2 > 0.0, distance2, 1.0))
-    tangent = 1.0 - arc2 / 6.0 * (1.0 - arc2 / 20.0)
-    down = 0.5 * s2k * (1.0 - arc2 / 12.0)
-    north, east = north * tangent, east * tangent
-    outward = (prime - down) * cos_lat - sin_lat * north  # from the Earth's axis, in the transducer's meridian
-    upward = ((1.0 - _E2) * prime - down) * sin_lat + cos_lat * north
-    found = np.degrees(np.arctan2(upward, (1.0 - _E2) * np.hypot(outward, east)))
-    turned = np.asarray(longitude, dtype=np.float64) + np.degrees(np.arctan2(east, outward))
-    return found, (turned + 180.0) % 360.0 - 180.0
+    whole = np.broadcast_arrays(x, y, *frame)
+    columns = [kernel_array(column.ravel()) for column in whole]
+    size = columns[0].size
+    found = np.empty((2, size))
+    kernels.places(*columns[:2], tuple(columns[2:]), one_minus_e2, np.empty((2, size)), *found)
+    return found[0].reshape(whole[0].shape)[()], found[1].reshape(whole[0].shape)[()]
+
+
+def place_frame(
+    latitude: ArrayLike, longitude: ArrayLike, heading: ArrayLike, *, height: ArrayLike = 0.0
+) -> tuple[tuple[Floats, ...], float]:
+    """What the kernels want of transducers, each in the shape of what it comes from, and 1 less the excentricity².
+
+    The columns are those of `_kernels_positions.place_chunk`, as float64 arrays.
+    """
+    degrees = _latitude(latitude)
+    lat, course = np.radians(degrees), np.radians(np.asarray(heading, dtype=np.float64))
+    sine = np.sin(lat)
+    columns = (np.cos(course), np.sin(course), sine, np.cos(lat), *_radii(sine), height, degrees, longitude)
+    return tuple(np.asarray(column, dtype=np.float64) for column in columns), 1.0 - _E2
 
 
 def offsets(
@@ -230,9 +234,9 @@ def flattened(profile: Profile, radius: float) -> Profile:
         raise InputError(f"radius of the Earth is {radius:g} m: about 6371000 would be right")
     thickness = np.diff(water.depth)
     parts = np.ceil(thickness / _THICKEST).astype(np.int64)
-    fill = [np.linspace(0.0, 1.0, n, endpoint=False) * h for n, h in zip(parts, thickness, strict=True)]
-    tops = np.repeat(water.depth[:-1], parts)
-    depth = np.append(tops + np.concatenate(fill), water.depth[-1])
+    before = np.arange(parts.sum()) - np.repeat(np.cumsum(parts) - parts, parts)  # parts of the layer above each
+    inside = before * np.repeat(thickness / parts, parts)
+    depth = np.append(np.repeat(water.depth[:-1], parts) + inside, water.depth[-1])
     factor = radius / (radius - depth)
 
     def scaled(column: Floats) -> Floats:

@@ -106,7 +106,7 @@ def thu_95_from_covariance(xx: ArrayLike, yy: ArrayLike, xy: ArrayLike = 0.0) ->
 
 def _radius_factor(squared: Floats) -> Floats:
     """The radius in larger standard deviations, by the squared ratio of the smaller to the larger one."""
-    radius, steps = _radius_table()
+    radius, steps = radius_table()
     at = squared * (_RADIUS_NODES - 1)
     with np.errstate(invalid="ignore"):  # NaN has no place in the table, and stays NaN in the last line
         node = at.astype(np.intp)
@@ -115,7 +115,8 @@ def _radius_factor(squared: Floats) -> Floats:
 
 
 @lru_cache(maxsize=1)
-def _radius_table() -> tuple[Floats, Floats]:
+def radius_table() -> tuple[Floats, Floats]:
+    """The radius of 95 %, in larger standard deviations, at even steps of the squared ratio; and its steps."""
     turn = (np.arange(_RADIUS_ANGLES) + 0.5) * (0.5 * np.pi / _RADIUS_ANGLES)
     spread = np.cos(turn) ** 2 + np.linspace(0.0, 1.0, _RADIUS_NODES)[:, np.newaxis] * np.sin(turn) ** 2
     radius = np.full((_RADIUS_NODES, 1), TVU_FACTOR)

@@ -25,18 +25,19 @@ DEFAULT_ANGLE = 75.0  # degrees from the vertical
 _LEAST, _MOST = 1e-6, 10.0  # m: tolerances that make sense
 # Cells are fitted to this part of the tolerance, since the largest error need not lie where it is looked for.
 _SHARE = 0.75
-# A cell may leave so many of the last nodes it reaches, or this part of them, to exact marches instead of being
-# divided.
-_LEFT_NODES, _LEFT_PART = 4, 0.02
+# A cell may leave so many of the last nodes it reaches, or this part of them (of few levels the larger one), to exact
+# marches instead of being divided.
+_LEFT_NODES, _LEFT_PART, _LEFT_OF_FEW = 4, 0.02, 0.125
 # Cells narrower than this part of the table are not divided further: in them a beam turns, and is marched exactly.
-_NARROWEST = 2e-3
+_NARROWEST = 5e-4
 _CELL_BINS = 4096
-_BINS_PER_NODE = 2
+_BINS_PER_NODE = 8
 
 _PLACES = np.cos((2 * np.arange(kernels.CUBIC)[::-1] + 1) * np.pi / (2 * kernels.CUBIC))
 _INVERSE = np.linalg.inv(np.vander(_PLACES, kernels.CUBIC, increasing=True))
 # Between the places of fitting a cubic errs most near the extremes of the Chebyshev polynomial, its ends among them.
 _CHECKS = np.cos(np.arange(kernels.CUBIC + 1) * np.pi / kernels.CUBIC)
+_ALL = np.concatenate((_PLACES, _CHECKS))
 
 
 @dataclass(frozen=True, eq=False)
@@ -59,13 +60,12 @@ class BeamTable:
     tolerance: float
     error: float
     max_angle: float
-    cells: tuple[NDArray[Any], ...]
-    layers: tuple[NDArray[Any], ...]
+    arrays: tuple[NDArray[Any], ...]
 
     @property
     def nbytes(self) -> int:
         """Memory that it takes, bytes."""
-        return sum(array.nbytes for array in (*self.cells, *self.layers))
+        return sum(array.nbytes for array in self.arrays)
 
     def positions(self, angles: ArrayLike, times: ArrayLike, *, surface_speed: ArrayLike | None = None) -> Beams:
         """Depth and across-track distance of beams after a one-way travel time.
@@ -78,7 +78,7 @@ class BeamTable:
         Returns
         -------
         Beams
-            As `beam_positions` gives them, within the tolerance; every status is the same but within it of an edge.
+            As `beam_positions` gives them, within the tolerance, with the same statuses.
 
         Raises
         ------
@@ -107,7 +107,7 @@ class BeamTable:
         status. Beams beyond the profile go on at its last gradient.
         """
         water = self.water
-        kernels.beams_by_table(angles, times, steering, water.source_speed, water.down, self.cells, self.layers, *out)
+        kernels.beams_by_table(angles, times, steering, water.source_speed, water.down, self.arrays, *out)
 
 
 def beam_table(
@@ -155,34 +155,39 @@ def beam_table(
     water = below_transducer(profile, transducer_depth)
     top = float(np.sin(np.radians(max_angle)) ** 2)
     edges, served, rows, error = _cells(water, top, tolerance)
-    nodes, bins = water.down[0].size, _BINS_PER_NODE * water.down[0].size
-    time_bins = np.array([bins / max(1.02 * row[last, 0], 1e-9) for row, last in zip(rows, served, strict=True)])
-    guesses = np.empty((len(rows), bins), dtype=np.int32)
-    for row, last, scale, guess in zip(rows, served, time_bins, guesses, strict=True):
-        kernels.fill_guesses(last, row, scale, guess)
+    return BeamTable(water, tolerance, error, max_angle, _packed(water, tolerance, edges, served, rows))
+
+
+def _packed(
+    water: Medium, tolerance: float, edges: Floats, served: list[int], rows: list[Floats]
+) -> tuple[NDArray[Any], ...]:
+    """All cells one after the other, as the kernels want them."""
+    bins = [_BINS_PER_NODE * (last + 1) for last in served]
+    guesses = [np.empty(count + 1, dtype=np.int32) for count in bins]
+    for row, last, count, guess in zip(rows, served, bins, guesses, strict=True):
+        kernels.fill_guesses(last, row, count, guess)
     # The cell in which each bin of w begins; the kernel steps on from there.
+    top = edges[-1]
     begins = np.searchsorted(edges, np.arange(_CELL_BINS) * (top / _CELL_BINS), side="right") - 1
-    cells = (
+    first_row, first_guess = (np.cumsum([0, *(len(each) for each in list_[:-1])]) for list_ in (rows, guesses))
+    return (
         edges,
-        2.0 / np.diff(edges),
         np.clip(begins, 0, len(rows) - 1).astype(np.int32),
-        np.array(_CELL_BINS * (1.0 - 1e-12) / top),
-        np.array(served, dtype=np.int64),
-    )
-    return BeamTable(
-        water=water,
-        tolerance=tolerance,
-        error=error,
-        max_angle=max_angle,
-        cells=(*cells[:3], cells[3].reshape(1), cells[4]),
-        layers=(time_bins, guesses, np.array(rows), _of_nodes(water, nodes)),
+        np.array([_CELL_BINS * (1.0 - 1e-12) / top, tolerance, tolerance / water.source_speed]),
+        np.column_stack((2.0 / np.diff(edges), bins)),
+        np.column_stack((served, first_row, first_guess)).astype(np.int64),
+        np.concatenate(guesses),
+        np.concatenate(rows),
+        _of_nodes(water),
     )
 
 
 def _cells(water: Medium, top: float, tolerance: float) -> tuple[Floats, list[int], list[Floats], float]:
     """Cells of w = sin² of the angle whose cubics are good enough, the nodes each serves, and the largest error."""
     nodes = water.down[0].size
-    time, reach, errors = np.empty(nodes), np.empty(nodes), np.empty(nodes)
+    work = (np.empty(_ALL.size), np.empty(_ALL.size), np.empty((nodes, _ALL.size)), np.empty((nodes, _ALL.size)))
+    row = np.empty((nodes, 2 * kernels.CUBIC))
+    left = max(min(_LEFT_NODES, _LEFT_OF_FEW * nodes), _LEFT_PART * nodes)
     todo = [(0.0, top)]
     edges: list[float] = []
     served: list[int] = []
@@ -190,27 +195,26 @@ def _cells(water: Medium, top: float, tolerance: float) -> tuple[Floats, list[in
     worst = 0.0
     while todo:
         low, high = todo.pop()
-        row = np.empty((nodes, 2 * kernels.CUBIC))
-        last = kernels.fit_cell(low, high, water.down, _PLACES, _INVERSE, row, time, reach)
-        good = kernels.served_nodes(
-            low, high, last, water.source_speed, water.down, _CHECKS, row, _SHARE * tolerance, time, reach, errors
+        last, good, error = kernels.make_cell(
+            low, high, water.source_speed, water.down, _ALL, _INVERSE, _SHARE * tolerance, *work, row
         )
-        if good < last - max(_LEFT_NODES, _LEFT_PART * nodes) and high - low > _NARROWEST * top:
+        if good < last - left and high - low > _NARROWEST * top:
             middle = 0.5 * (low + high)
             todo += [(middle, high), (low, middle)]
             continue
         edges.append(low)
         served.append(int(good))
-        rows.append(row)
-        worst = max(worst, float(errors[: good + 1].max()))
+        rows.append(row[: good + 1].copy())
+        worst = max(worst, error)
     return np.array([*edges, top]), served, rows, worst
 
 
-def _of_nodes(water: Medium, nodes: int) -> Floats:
+def _of_nodes(water: Medium) -> Floats:
     """What the kernel needs of each node, side by side."""
     away, _, gradient, _, excess, ratio, _, _ = water.down
-    found = np.zeros((nodes, 8))  # a cache line each
+    found = np.zeros((away.size, 8))  # a cache line each
     found[:, 0], found[:, 1] = away, 1.0 + excess
     found[:, 2] = 0.5 * np.append(gradient, gradient[-1])
     found[:, 3], found[:, 4] = water.source_speed * ratio, ratio
+    found[:, 5] = np.append(away[1:], np.inf)
     return found

@@ -16,11 +16,9 @@ from scipy import integrate, optimize, special
 from ocean_sound.errors import InputError
 from ocean_sound.soundings import radius as module
 from ocean_sound.soundings.orders import (
-    LIMITED_BY,
     SWATH_NOTE,
     Order,
     holds,
-    largest_angle,
     read_orders,
     summarise,
     summary_dataset,
@@ -187,7 +185,7 @@ def test_the_radius_in_closed_form():
 
 def test_between_the_nodes_of_the_table_the_error_is_under_its_bound():
     """All midpoints, where straight lines err most: a step of Newton on the integral, finer in angle, says it."""
-    table = module._radius_table()[0]
+    table = module.radius_table()[0]
     middle = (np.arange(NODES) + 0.5) / NODES
     turn = (np.arange(200) + 0.5) * (0.5 * np.pi / 200)
     spread = np.cos(turn) ** 2 + middle[:, np.newaxis] * np.sin(turn) ** 2
@@ -371,106 +369,10 @@ def test_the_dataset_says_that_errors_shared_do_not_average_out():
     assert all({"long_name", "units"} <= set(dataset[name].attrs) for name in dataset.data_vars)
 
 
-# --- the largest angle
-
-
-def test_the_largest_angle_of_a_cosine_law():
-    """TVU growing as tan² θ times depth, THU as tan θ: both ends are known."""
-    angle, depth = np.linspace(0.0, 75.0, 1501), np.array([5.0, 20.0, 100.0, 400.0])
-    tangent = np.tan(np.radians(angle))[:, np.newaxis]
-    order = ORDERS["Special"]
-    tvu, thu = 0.004 * tangent**2 * depth, 0.006 * tangent * depth
-    reach = largest_angle(order, angle, depth, tvu, thu)
-    of_tvu = np.degrees(np.arctan(np.sqrt(order.tvu(depth) / (0.004 * depth))))
-    of_thu = np.degrees(np.arctan(order.thu(depth) / (0.006 * depth)))
-    assert reach.angle == pytest.approx(np.minimum(75.0, np.minimum(of_tvu, of_thu)), abs=1e-4)
-    assert (reach.angle <= np.minimum(of_tvu, of_thu) + 1e-9).all()  # a chord of a convex curve is on the safe side
-    assert [LIMITED_BY[code] for code in reach.limited_by] == ["tvu", "tvu", "tvu", "thu"]
-    assert not reach.holds_beyond.any()
-    wide = largest_angle(order, angle, [1.0], 0.0, 0.0)
-    assert (wide.angle.tolist(), wide.limited_by.tolist()) == ([75.0], [0])
-
-
-def test_beams_that_hold_again_farther_out():
-    """A speed wrong by e in h metres moves the depth by (1 - tan² θ) h e/c to first order: not at 45 degrees."""
-    angle = np.linspace(0.0, 70.0, 701)
-    moved = np.abs(1.0 - np.tan(np.radians(angle)) ** 2)[:, np.newaxis]
-    order = Order("x", tvu_fixed=0.5)
-    reach = largest_angle(order, angle, [10.0, 20.0], moved * [0.4, 0.6], NAN)
-    assert reach.angle[0] == pytest.approx(math.degrees(math.atan(1.5)), abs=1e-3)
-    assert np.isnan(reach.angle[1])
-    assert [LIMITED_BY[code] for code in reach.limited_by] == ["tvu", "tvu"]
-    assert reach.holds_beyond.tolist() == [False, True]
-
-
-def test_what_ends_the_angles():
-    angle, depth = [0.0, 10.0, 20.0], [1.0, 2.0, 3.0, 4.0, 5.0]
-    order = Order("x", tvu_fixed=1.0, thu_fixed=1.0)
-    tvu = np.array([[0.5, 0.5, 0.5, 2.0, NAN], [1.5, 0.5, NAN, 0.1, 0.1], [0.1, 1.0, 0.1, 0.1, 0.1]])
-    thu = np.array([[0.5, 0.5, 0.5, 2.0, 0.5], [1.5, 0.5, 0.50, 0.1, 0.1], [0.1, 1.5, 0.1, 0.1, 0.1]])
-    kept = tvu.copy()
-    reach = largest_angle(order, angle, depth, tvu, thu)
-    assert reach.angle == pytest.approx([5.0, 15.0, 0.0, NAN, NAN], nan_ok=True)
-    assert [LIMITED_BY[code] for code in reach.limited_by] == [
-        "tvu_and_thu",
-        "thu",
-        "unknown",
-        "tvu_and_thu",
-        "unknown",
-    ]
-    assert reach.holds_beyond.tolist() == [True, False, True, True, True]
-    np.testing.assert_array_equal(tvu, kept)
-
-
-@given(st.lists(st.floats(0.0, 3.0), min_size=3, max_size=9), st.lists(st.floats(0.0, 3.0), min_size=9, max_size=9))
-def test_all_beams_up_to_the_angle_hold(tvu, thu):
-    angle = np.arange(len(tvu)) * 8.0
-    order = Order("x", tvu_fixed=1.0, thu_fixed=1.5)
-    reach = largest_angle(order, angle, [10.0], np.array(tvu)[:, np.newaxis], np.array(thu[: len(tvu)])[:, np.newaxis])
-    inside = angle <= reach.angle[0]
-    held = holds(order, 10.0, tvu, thu[: len(tvu)]).both
-    assert held[inside].all()
-    first = next((at for at, good in enumerate(held) if not good), None)
-    assert (first is None) == (reach.limited_by[0] == 0)
-    if first:
-        assert angle[first - 1] <= reach.angle[0] <= angle[first]
-
-
 def test_a_limit_of_0_at_the_shore():
     order = Order("x", tvu_share=0.01)
     (summary,) = summarise([order], 0.0, [0.0, 0.1], 1.0)
     assert (summary.held, summary.tvu_fails, summary.largest_tvu) == (1, 1, INF)
-    reach = largest_angle(order, [0.0, 10.0, 20.0], [0.0], [[0.0], [0.0], [0.1]], 1.0)
-    assert (reach.angle.tolist(), reach.limited_by.tolist()) == ([10.0], [1])
-
-
-def test_the_reach_as_a_dataset():
-    reach = largest_angle(ORDERS["1a"], [0.0, 60.0], [10.0, 20.0], [[0.1, 0.1], [0.2, 9.0]], 1.0)
-    dataset = reach.to_dataset()
-    assert dataset["largest_angle"].dims == ("depth",)
-    assert dataset["largest_angle"].values == pytest.approx(reach.angle)
-    assert dataset["limited_by"].attrs["flag_meanings"].split() == list(LIMITED_BY)
-    assert dataset["limited_by"].values.tolist() == [0, 1]
-    assert dataset.attrs["order"] == "1a"
-
-
-@pytest.mark.parametrize(
-    ("given", "message"),
-    [
-        (([10.0, 0.0], [1.0], 0.1, 0.1), "angle: an increasing row of degrees from 0 to less than 90"),
-        (([0.0, 90.0], [1.0], 0.1, 0.1), "angle: an increasing row"),
-        (([-10.0, 0.0], [1.0], 0.1, 0.1), "angle: an increasing row"),
-        (([0.0, NAN], [1.0], 0.1, 0.1), "angle: an increasing row"),
-        (([], [1.0], 0.1, 0.1), "angle: an increasing row"),
-        (([0.0, 10.0], 1.0, 0.1, 0.1), "depth: a row of finite metres"),
-        (([0.0, 10.0], [NAN], 0.1, 0.1), "depth: a row of finite metres"),
-        (([0.0, 10.0], [1.0], [[0.1, 0.1]] * 3, 0.1), r"tvu_95: its shape is \(3, 2\); \(2, 1\) for angle and depth"),
-        (([0.0, 10.0], [1.0], 0.1, [[0.1], [-0.1]]), "thu_95: -0.1 at index 1, 0 is impossible"),
-    ],
-)
-def test_tables_that_can_not_be_searched(given, message):
-    with pytest.raises(InputError, match=message):
-        largest_angle(ORDERS["2"], *given)
 
 
 def test_importing_orders_does_not_load_the_checker_of_fields():
