@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, ClassVar
 
 import numpy as np
 
@@ -14,7 +14,15 @@ if TYPE_CHECKING:
     from .shadow import Shadow
 
 # How a ray ends, in the order of the kernels' codes.
-STATUSES = ("reached_maximum_range", "split_at_speed_maximum", "stopped_at_surface", "stopped_at_seabed")
+STATUSES = (
+    "reached_maximum_range",
+    "split_at_speed_maximum",
+    "stopped_at_surface",
+    "stopped_at_seabed",
+    "turned_back",
+    "absorbed_by_seabed",
+    "stuck",
+)
 
 _COUNTED = ("turns", "surface_bounces", "seabed_bounces")
 _MEASURED = ("launch_angle", "arrival_angle", "range", "depth", "travel_time", "path_length", "travel_time_uncertainty")
@@ -47,6 +55,13 @@ class Fan:
     status: np.ndarray
     path_range: np.ndarray
     path_depth: np.ndarray
+
+    TITLE: ClassVar[str] = "Rays of sound through one profile"
+
+    @property
+    def comment(self) -> str:
+        """How the numbers came about."""
+        return "Exact arcs through layers of constant gradient; between its levels the sea is not linear."
 
     def __len__(self) -> int:
         return self.launch_angle.size
@@ -91,13 +106,13 @@ class Fan:
         dataset = xarray.Dataset(
             variables,
             attrs={
-                "title": "Rays of sound through one profile",
+                "title": self.TITLE,
                 **self.about(),
-                "comment": "Exact arcs through layers of constant gradient; between its levels the sea is not linear.",
+                "comment": self.comment,
             },
         )
         if self.travel_time_uncertainty is None:
-            dataset.travel_time.attrs["comment"] = "no uncertainty given, since the profile carries none"
+            dataset.travel_time.attrs["comment"] = "no uncertainty given, since the water carries none"
         if shadow is None:
             return dataset
         zones = shadow.to_dataset().rename(depth="grid_depth", range="grid_range")

@@ -4,25 +4,27 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from itertools import pairwise
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, ClassVar
 
 import numpy as np
 
 from ..errors import InputError
+from ..profile import Profile
 from . import _kernels, _kernels_shadow
 from .medium import Medium, medium
 
 if TYPE_CHECKING:
     import xarray
 
-    from ..profile import Profile
+    from ..section import Section
 
-# The classes of paths, in the order of the kernels.
+# The classes of paths in a profile, in the order of the kernels.
 CLASSES = ("no_bounce", "surface_bounces")
 
 _MEANING = {
     "no_bounce": "no ray arrives without touching surface or seabed",
     "surface_bounces": "no ray arrives without touching the seabed, surface bounces being allowed",
+    "any_bounces": "no ray arrives by any way",
 }
 
 CAUTION = (
@@ -54,10 +56,53 @@ class Shadow:
     profile: Profile
     source_depth: float
     seabed_depth: float
+    max_range: float
     depth: np.ndarray
     range: np.ndarray
     masks: dict[str, np.ndarray]
     intervals: dict[str, np.ndarray]
+
+    CLASSES: ClassVar[tuple[str, ...]] = CLASSES
+    TITLE: ClassVar[str] = "Shadow of refraction in one profile"
+
+    def row(self, depth: float) -> int:
+        """The place of a depth in the grid.
+
+        Raises
+        ------
+        InputError
+            If it is not a depth of the grid.
+
+        """
+        at = np.flatnonzero(np.isclose(self.depth, depth, rtol=0.0, atol=1e-6))
+        if not at.size:
+            raise InputError(f"depth {depth:g} m is not one of the grid: give it among depths=")
+        return int(at[0])
+
+    def reached(self, name: str, depth: float) -> np.ndarray:
+        """Ranges, from and to, m, that a class of paths reaches at a depth of the grid: (n, 2)."""
+        rows = self.intervals[name]
+        dark = rows[rows[:, 0] == self.depth[self.row(depth)], 1:]
+        return _complement(depth, dark, self.max_range)[:, 1:]
+
+    def convergence_zones(self, depth: float) -> np.ndarray:
+        """Where rays that have not touched the seabed come back to a depth of the grid beyond a shadow.
+
+        Parameters
+        ----------
+        depth : float
+            m.
+
+        Returns
+        -------
+        numpy.ndarray, shape (n, 3)
+            Number of the zone from 1 on, its start and end, m. What is reached directly, before the first shadow, is no
+            zone; one that the grid's last range cuts off ends there.
+
+        """
+        again = self.reached("surface_bounces", depth)
+        again = again[again[:, 0] > 0.0]
+        return np.column_stack((np.arange(1.0, len(again) + 1.0), again))
 
     def summary(self) -> dict[str, float]:
         """The part of the grid that lies in shadow, for each class of paths."""
@@ -81,17 +126,22 @@ class Shadow:
             )
             for name, mask in self.masks.items()
         }
-        rows = np.concatenate([self.intervals[name] for name in CLASSES])
-        kinds = np.repeat(np.arange(len(CLASSES), dtype=np.int8), [len(self.intervals[name]) for name in CLASSES])
+        names = self.CLASSES
+        rows = np.concatenate([self.intervals[name] for name in names])
+        kinds = np.repeat(np.arange(len(names), dtype=np.int8), [len(self.intervals[name]) for name in names])
         paths = {
             "long_name": "paths that do not arrive in this interval",
-            "flag_values": np.arange(len(CLASSES), dtype=np.int8),
-            "flag_meanings": " ".join(CLASSES),
+            "flag_values": np.arange(len(names), dtype=np.int8),
+            "flag_meanings": " ".join(names),
         }
         variables["interval_paths"] = ("interval", kinds, paths)
         for column, name in enumerate(("depth", "start", "end")):
             about = {"long_name": f"{name} of the shadow interval", "units": "m"}
             variables[f"interval_{name}"] = ("interval", rows[:, column], about)
+        zones = [np.insert(self.convergence_zones(depth), 0, depth, axis=1) for depth in self.depth.tolist()]
+        for column, (name, unit) in enumerate((("depth", "m"), ("number", "1"), ("start", "m"), ("end", "m"))):
+            about = {"long_name": f"{name} of the convergence zone", "units": unit}
+            variables[f"convergence_{name}"] = ("zone", np.concatenate(zones)[:, column], about)
         return xarray.Dataset(
             variables,
             coords={
@@ -99,7 +149,7 @@ class Shadow:
                 "range": ("range", self.range, attributes("range")),
             },
             attrs={
-                "title": "Shadow of refraction in one profile",
+                "title": self.TITLE,
                 "cast_id": self.profile.id,
                 "source_depth_m": self.source_depth,
                 "seabed_depth_m": self.seabed_depth,
@@ -109,7 +159,7 @@ class Shadow:
 
 
 def find_shadow(
-    profile: Profile,
+    water: Profile | Section,
     *,
     source_depth: float,
     max_range: float,
@@ -117,13 +167,40 @@ def find_shadow(
     ranges: Any = None,
     grid: tuple[int, int] = GRID,
     seabed_depth: float | None = None,
+    widest: float | None = None,
 ) -> Shadow:
-    """Find shadow zones as `shadow_zones` does, into plain arrays."""
+    """Find shadow zones as `shadow_zones` does, into plain arrays; in a section, into a `SectionShadow`."""
+    checked_max_range(max_range)
+    if isinstance(water, Profile):
+        if widest is not None:
+            raise InputError(f"widest is {widest:g}, but goes with a section only: leave it out")
+        return _in_profile(water, source_depth, seabed_depth, max_range, (depths, ranges, grid))
+    if seabed_depth is not None:
+        raise InputError(f"seabed_depth is {seabed_depth:g} m, but a section has a seabed of its own: leave it out")
+    from .section_shadow import find_section_shadow
+
+    return find_section_shadow(
+        water, source_depth=source_depth, max_range=max_range, depths=depths, ranges=ranges, grid=grid, widest=widest
+    )
+
+
+def checked_max_range(max_range: float) -> None:
+    """Raise InputError for a range that is no positive number."""
     if not (np.isfinite(max_range) and max_range > 0.0):
         raise InputError(f"max_range is {max_range:g} m: it must be a positive number of metres")
+
+
+def _in_profile(
+    profile: Profile,
+    source_depth: float,
+    seabed_depth: float | None,
+    max_range: float,
+    points: tuple[Any, Any, tuple[int, int]],
+) -> Shadow:
     plain = medium(profile, source_depth, seabed_depth=seabed_depth)
-    down = _grid("depths", depths, np.linspace(0.0, plain.seabed_depth, grid[0]), plain.seabed_depth)
-    across = _grid("ranges", ranges, np.linspace(0.0, max_range, grid[1]), max_range)
+    depths, ranges, grid = points
+    down = checked_grid("depths", depths, np.linspace(0.0, plain.seabed_depth, grid[0]), plain.seabed_depth)
+    across = checked_grid("ranges", ranges, np.linspace(0.0, max_range, grid[1]), max_range)
     water = medium(profile, source_depth, seabed_depth=seabed_depth, levels=down)
     lit = _merge(_intervals(water, down, float(max_range)), down.size, float(max_range))
     masks, intervals = {}, {}
@@ -136,6 +213,7 @@ def find_shadow(
         profile=profile,
         source_depth=water.source_depth,
         seabed_depth=water.seabed_depth,
+        max_range=float(max_range),
         depth=down,
         range=across,
         masks=masks,
@@ -143,7 +221,15 @@ def find_shadow(
     )
 
 
-def _grid(name: str, values: Any, default: np.ndarray, largest: float) -> np.ndarray:
+def checked_grid(name: str, values: Any, default: np.ndarray, largest: float) -> np.ndarray:
+    """The depths or ranges asked for, or the default.
+
+    Raises
+    ------
+    InputError
+        If they do not increase, or leave 0 to the largest.
+
+    """
     grid = default if values is None else np.atleast_1d(np.asarray(values, dtype=float))
     if grid.ndim != 1 or grid.size == 0 or not np.all(np.diff(grid) > 0.0):
         raise InputError(f"{name} must be a list of increasing numbers of metres")
@@ -244,24 +330,26 @@ def _complement(depth: float, intervals: np.ndarray, max_range: float) -> np.nda
 
 
 def shadow_zones(
-    water: Profile,
+    water: Profile | Section,
     *,
     source_depth: float,
     max_range: float,
     depths: Any = None,
     ranges: Any = None,
     seabed_depth: float | None = None,
+    widest: float | None = None,
 ) -> xarray.Dataset:
     """Find where refraction lets no ray of a source arrive, over range and depth.
 
-    Two classes of paths are told apart: rays that touch neither surface nor seabed, and rays that may bounce off the
-    surface but not off the seabed. Shadow is not silence: sound also arrives by the seabed, by diffraction and by
-    scattering.
+    Classes of paths are told apart: rays that touch neither surface nor seabed; rays that may bounce off the surface
+    but not off the seabed; and, in a section, any rays. Shadow is not silence: sound also arrives by the seabed, by
+    diffraction and by scattering.
 
     Parameters
     ----------
-    water : Profile
-        The water; one that starts below the surface is extended to it at its first speed.
+    water : Profile or Section
+        A profile that starts below the surface is extended to it at its first speed. In a section the source is at its
+        start.
     source_depth : float
         Depth of the source, m.
     max_range : float
@@ -269,14 +357,20 @@ def shadow_zones(
     depths, ranges : array_like, optional
         The grid, m, increasing; by default 201 depths from surface to seabed and 501 ranges from 0 to `max_range`.
     seabed_depth : float, optional
-        Depth of a flat seabed within the profile, m; by default the deepest level is the bottom.
+        Depth of a flat seabed within a profile, m; by default the deepest level is the bottom. A section has its own.
+    widest : float, optional
+        In a section, how many times as wide as straight rays would have those may have spread that count; 100 where not
+        given.
 
     Returns
     -------
     xarray.Dataset
         `shadow_no_bounce` and `shadow_surface_bounces` on (`depth`, `range`): 1 in shadow, 0 where a ray arrives; and
         the shadow as intervals, dimension `interval`: `interval_paths` (0 no bounce, 1 surface bounces allowed),
-        `interval_depth`, `interval_start`, `interval_end` in m.
+        `interval_depth`, `interval_start`, `interval_end` in m. Convergence zones, dimension `zone`: for each depth of
+        the grid where rays without seabed bounces come back beyond a shadow, `convergence_depth`,
+        `convergence_number` from 1 on, `convergence_start`, `convergence_end`. In a section also `shadow_any_bounces`,
+        the value 2 in masks below the seabed, `seabed_depth`, and `latitude` and `longitude` where it has a place.
 
     Raises
     ------
@@ -288,6 +382,13 @@ def shadow_zones(
     Edges that belong to a ray tangent at a speed maximum, surface or seabed, or turning at a grid depth, are exact for
     the layered profile; edges at a caustic between such rays are as good as a fan with a step of 0.005 degrees finds
     them, second order in the step.
+
+    In a section rays are added to a fan until neighbouring ones leave nothing open between them to a 200th of the
+    deepest seabed or the spacing of the depths asked for; intervals end half-way between ranges of the grid. Rays that
+    have spread more than `widest` times as wide as straight ones would have (100: 20 dB below spherical spreading)
+    count as none, where they have not met the seabed: in smooth water a few rays creep along a maximum of speed and
+    leave it anywhere, where a layered profile parts them at once. Rays are followed up to a hundred bounces off
+    the seabed, those steeper than 20 degrees up to five.
 
     Examples
     --------
@@ -308,5 +409,6 @@ def shadow_zones(
         depths=depths,
         ranges=ranges,
         seabed_depth=seabed_depth,
+        widest=widest,
     )
     return shadow.to_dataset()

@@ -1,4 +1,4 @@
-"""Trace rays through one profile."""
+"""Trace rays through a profile or a section."""
 
 from __future__ import annotations
 
@@ -8,14 +8,16 @@ import numpy as np
 
 from .._numba import kernel_array
 from ..errors import InputError
+from ..profile import Profile
 from . import _kernels
 from .fan import Fan
 from .medium import medium
+from .section_tracing import DEPTH_TOLERANCE, TIME_TOLERANCE, trace_section
 
 if TYPE_CHECKING:
     import xarray
 
-    from ..profile import Profile
+    from ..section import Section
 
 # Nothing is heard of a ray that has bounced so often; without an end to it a vertical ray would go on for ever.
 MOST_BOUNCES = 10_000
@@ -39,7 +41,7 @@ def even_angles(lowest: float, highest: float, number: int) -> np.ndarray:
 
 
 def trace_fan(
-    profile: Profile,
+    water: Profile | Section,
     *,
     source_depth: float,
     launch_angles: Any,
@@ -48,20 +50,44 @@ def trace_fan(
     seabed_depth: float | None = None,
     max_surface_bounces: int = MOST_BOUNCES,
     max_seabed_bounces: int = MOST_BOUNCES,
+    depth_tolerance: float = DEPTH_TOLERANCE,
+    time_tolerance: float = TIME_TOLERANCE,
 ) -> Fan:
-    """Trace rays as `trace` does, into plain arrays."""
-    water = medium(profile, source_depth, seabed_depth=seabed_depth)
-    angles = np.atleast_1d(np.asarray(launch_angles, dtype=float))
-    _check_angles(angles)
+    """Trace rays as `trace` does, into plain arrays; through a section, into a `SectionFan`."""
+    angles = checked_angles(launch_angles)
     if not (np.isfinite(max_range) and max_range > 0.0):
         raise InputError(f"max_range is {max_range:g} m: it must be a positive number of metres")
     if points != 0 and not 2 <= points <= MOST_POINTS:
         raise InputError(f"points is {points}: it must be 0 (no path) or from 2 to {MOST_POINTS}")
-    limits = []
-    for name, limit in (("max_surface_bounces", max_surface_bounces), ("max_seabed_bounces", max_seabed_bounces)):
+    limits = max_surface_bounces, max_seabed_bounces
+    for name, limit in zip(("max_surface_bounces", "max_seabed_bounces"), limits, strict=True):
         if not 0 <= limit <= MOST_BOUNCES:
             raise InputError(f"{name} is {limit}: it must lie between 0 and {MOST_BOUNCES}")
-        limits.append(float(limit))
+    if isinstance(water, Profile):
+        return _trace_profile(water, source_depth, seabed_depth, angles, max_range, points, limits)
+    if seabed_depth is not None:
+        raise InputError(f"seabed_depth is {seabed_depth:g} m, but a section has a seabed of its own: leave it out")
+    return trace_section(
+        water,
+        source_depth=source_depth,
+        angles=angles,
+        max_range=max_range,
+        points=points,
+        limits=limits,
+        tolerances=(depth_tolerance, time_tolerance),
+    )
+
+
+def _trace_profile(
+    profile: Profile,
+    source_depth: float,
+    seabed_depth: float | None,
+    angles: np.ndarray,
+    max_range: float,
+    points: int,
+    limits: tuple[int, int],
+) -> Fan:
+    water = medium(profile, source_depth, seabed_depth=seabed_depth)
     values = np.empty((6, angles.size))
     counts = np.empty((4, angles.size), dtype=np.int64)
     paths = np.empty((2, angles.size, points))
@@ -72,7 +98,7 @@ def trace_fan(
         water.sides,
         water.tables,
         float(max_range),
-        (limits[0], limits[1]),
+        (float(limits[0]), float(limits[1])),
         values,
         counts,
         paths[0],
@@ -99,7 +125,16 @@ def trace_fan(
     )
 
 
-def _check_angles(angles: np.ndarray) -> None:
+def checked_angles(launch_angles: Any) -> np.ndarray:
+    """Launch angles as an array.
+
+    Raises
+    ------
+    InputError
+        If one is not between -90 and 90 degrees, or there is none.
+
+    """
+    angles = np.atleast_1d(np.asarray(launch_angles, dtype=float))
     if angles.ndim != 1 or angles.size == 0:
         raise InputError(f"launch_angles has the shape {angles.shape}: give one angle or a list of them")
     wrong = np.flatnonzero(~(np.abs(angles) <= 90.0))
@@ -108,10 +143,11 @@ def _check_angles(angles: np.ndarray) -> None:
             f"launch angle {wrong[0]} is {angles[wrong[0]]:g} degrees: "
             "angles are from the horizontal, positive downward, from -90 to 90"
         )
+    return angles
 
 
 def trace(
-    water: Profile,
+    water: Profile | Section,
     *,
     source_depth: float,
     launch_angles: Any,
@@ -120,13 +156,16 @@ def trace(
     seabed_depth: float | None = None,
     max_surface_bounces: int = MOST_BOUNCES,
     max_seabed_bounces: int = MOST_BOUNCES,
+    depth_tolerance: float = DEPTH_TOLERANCE,
+    time_tolerance: float = TIME_TOLERANCE,
 ) -> xarray.Dataset:
-    """Trace rays of sound through a profile: exact arcs of circles in layers of constant gradient.
+    """Trace rays of sound: through a profile by exact arcs of circles, through a section in controlled steps.
 
     Parameters
     ----------
-    water : Profile
-        The water; one that starts below the surface is extended to it at its first speed.
+    water : Profile or Section
+        A profile that starts below the surface is extended to it at its first speed. A section is traced from its
+        start.
     source_depth : float
         Depth of the source, m.
     launch_angles : float or array_like, shape (rays,)
@@ -136,9 +175,11 @@ def trace(
     points : int
         Sample each path at so many points, evenly spaced in travel time, both ends among them; 0 for no paths.
     seabed_depth : float, optional
-        Depth of a flat seabed within the profile, m; by default the deepest level is the bottom.
+        Depth of a flat seabed within a profile, m; by default the deepest level is the bottom. A section has its own.
     max_surface_bounces, max_seabed_bounces : int
         A ray that would bounce more often ends there instead; 0 ends it at its first touch. At most 10 000.
+    depth_tolerance, time_tolerance : float
+        Errors, m and s, to aim at where a ray of a section ends; a profile needs none.
 
     Returns
     -------
@@ -146,9 +187,11 @@ def trace(
         For each `ray`: `launch_angle` and `arrival_angle` (degrees, positive downward, in the direction of travel),
         `range`, `depth` and `path_length` (m), `travel_time` (s) with `travel_time_uncertainty` (k = 1, where the
         profile has one), `turns` (turning points), `surface_bounces`, `seabed_bounces`, and `status`; with `points`,
-        `path_range` and `path_depth` on (`ray`, `point`). Status 0: reached the range asked for; 1: tangent at a
-        maximum of speed, where a ray splits and has no one path; 2 and 3: stopped at surface or seabed by the limit of
-        bounces.
+        `path_range` and `path_depth` on (`ray`, `point`). Through a section also `caustics` (how often neighbouring
+        rays crossed) and `spreading` (m per radian). Status 0: reached the range asked for; 1: tangent at a maximum of
+        speed, where a ray splits and has no one path; 2 and 3: stopped at surface or seabed by the limit of bounces;
+        4: turned back by a steep seabed; 5: absorbed by the seabed; 6: stuck, touching a boundary along its length or
+        in a corner that it does not get out of.
 
     Raises
     ------
@@ -160,6 +203,10 @@ def trace(
     End points of the layered model are good to about 1e-9 m and 1e-12 s, also for grazing and vertical rays (backward
     error in launch angle under 1e-14 rad). That is arithmetic, not accuracy: between the levels of a cast the sea is
     not linear. The geometry of rays in constant gradient is in any text; the forms used are derived in `_kernels`.
+
+    Through a section the ray equations and those of a neighbouring ray are integrated in adaptive steps of order 6
+    (`_kernels_section`); reflections are located to 1e-9 m, with slope and curvature of the seabed. Where neighbouring
+    rays part quickly, as they do after several bounces from a rough seabed, the error grows with `spreading`.
 
     Examples
     --------
@@ -181,5 +228,7 @@ def trace(
         seabed_depth=seabed_depth,
         max_surface_bounces=max_surface_bounces,
         max_seabed_bounces=max_seabed_bounces,
+        depth_tolerance=depth_tolerance,
+        time_tolerance=time_tolerance,
     )
     return fan.to_dataset()
