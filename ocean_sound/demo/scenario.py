@@ -1,6 +1,6 @@
 """The demonstration, end to end: what it reads comes with the package, what it writes goes into one folder.
 
-The survey from Ostray Firth to Ostray Deep is invented, places and data alike; the cast of the last part is real.
+The survey from Ostray Firth to Ostray Deep is invented, places and data alike; the cast of part 6 is real.
 """
 
 from __future__ import annotations
@@ -12,12 +12,25 @@ import numpy as np
 from ..archive import build_archive, open_archive
 from ..casts import CastBlock, check_block, read_casts
 from ..errors import OutputError
-from ..figures import archive_figure, cast_sheet_figure, comparison_figure, fan_figure, profile_figure, save_figure
+from ..figures import (
+    archive_figure,
+    cast_sheet_figure,
+    comparison_figure,
+    fan_figure,
+    loss_figure,
+    profile_figure,
+    save_figure,
+    section_figure,
+    shadow_figure,
+)
 from ..files import packaged_profile, packaged_profiles, write_csv, write_dataset, write_text
 from ..profile import Profile
 from ..rays import even_angles, find_shadow, trace_fan
+from ..rays.loss import loss
+from ..section import Seabed, Section
 from ..soundings import compare, thin
 from ..water import equations, range_report, speed_of_columns
+from .sensors import receivers
 from .words import CAUTIONS, NEXT, TITLE
 
 if TYPE_CHECKING:
@@ -38,6 +51,15 @@ SOUNDER_DEPTH, SWATH = 4.0, (0.0, 30.0, 45.0, 60.0, 65.0)
 # How far a beam may move when a profile is thinned, m.
 TOLERANCE = 0.005
 SOURCE_DEPTH, DEEP_RANGE = 100.0, 80_000.0
+# The invented slope from Ostray Deep up to Ostray Edge: range along the track and depth, m; what it is made of; how
+# far it is looked at, and the depth at which someone listens.
+SLOPE = (
+    (0.0, 2550.0), (30_000.0, 2500.0), (60_000.0, 2300.0), (85_000.0, 1500.0), (105_000.0, 700.0), (125_000.0, 260.0),
+    (147_000.0, 203.0),
+)  # fmt: skip
+SLOPE_KINDS = ((0.0, "clay"), (70_000.0, "silt"), (110_000.0, "sand"))
+SLOPE_RANGE, LISTENING_DEPTH = 110_000.0, 60.0
+FREQUENCY = 400.0  # Hz
 
 
 def run_demo(folder: Path, *, replace: bool = False, progress: Callable[[str], None] = lambda _: None) -> str:
@@ -71,13 +93,15 @@ def run_demo(folder: Path, *, replace: bool = False, progress: Callable[[str], N
     parts = []
     for told, part in (
         (
-            "1 of 5: a shelf-edge cast, checked, and its beams (the first run compiles kernels: some seconds)",
+            "1 of 7: a shelf-edge cast, checked, and its beams (the first run compiles kernels: some seconds)",
             _shelf_edge,
         ),
-        ("2 of 5: the same place later, and what that does to soundings", _hours_later),
-        ("3 of 5: a moored source in deep water, its rays and shadow zones", _deep_water),
-        ("4 of 5: a real open cast under every equation", _real_cast),
-        ("5 of 5: an archive of all casts that come with the package", _all_casts),
+        ("2 of 7: the same place later, and what that does to soundings", _hours_later),
+        ("3 of 7: a moored source in deep water, its rays and shadow zones", _deep_water),
+        ("4 of 7: from the deep up the slope, through two casts", _slope),
+        ("5 of 7: receivers for tags on fish, where they hear and where not", receivers),
+        ("6 of 7: a real open cast under every equation", _real_cast),
+        ("7 of 7: an archive of all casts that come with the package", _all_casts),
     ):
         progress(told)
         parts.append("\n".join(part(folder)))
@@ -183,13 +207,52 @@ def _deep_water(folder: Path) -> Iterator[str]:
     yield f"   {share['surface_bounces']:.0%} none even with surface bounces (shadow is not silence)"
 
 
+def _slope(folder: Path) -> Iterator[str]:
+    """Rays, shadow and convergence zones where water and seabed change along the track."""
+    ranges, depths = np.array(SLOPE).T
+    section = Section.from_casts(
+        [_cast(DEEP), _cast(EDGE)], seabed=Seabed(ranges, depths, kind=SLOPE_KINDS), smooth=20.0
+    )
+    fan = trace_fan(
+        section, source_depth=SOURCE_DEPTH, launch_angles=even_angles(-10.0, 10.0, 21), max_range=SLOPE_RANGE,
+        points=801,
+    )  # fmt: skip
+    depth = LISTENING_DEPTH
+    listening = np.union1d(np.linspace(0.0, section.seabed.deepest, 61), [depth])
+    shadow = find_shadow(
+        section, source_depth=SOURCE_DEPTH, max_range=SLOPE_RANGE, depths=listening, grid=(61, 111)
+    )  # fmt: skip
+    write_dataset(fan.to_dataset(shadow), folder / "slope-rays.nc", replace=True)
+    save_figure(section_figure(section, fan, remark=INVENTED), folder / "slope-rays.png", replace=True)
+    save_figure(shadow_figure(shadow, [depth], remark=INVENTED), folder / "slope-shadow.png", replace=True)
+    heard = loss(
+        Profile.from_cast(_cast(EDGE)), source_depth=SOUNDER_DEPTH, frequency=FREQUENCY, seabed="sand",
+        phases="dropped", ranges=np.linspace(40.0, 8000.0, 200), depths=np.linspace(0.0, 202.0, 102),
+    )  # fmt: skip
+    write_dataset(heard, folder / "shelf-edge-loss.nc", replace=True)
+    save_figure(loss_figure(heard, remark=INVENTED), folder / "shelf-edge-loss.png", replace=True)
+    share = shadow.summary()
+    yield "4. From the deep up the slope, through two casts (invented casts and seabed)"
+    yield f"   {section.max_range / 1000:.0f} km of water that changes from cast to cast, above clay, silt and sand"
+    yield f"   source at {SOURCE_DEPTH:.0f} m, {len(fan)} rays to {SLOPE_RANGE / 1000:.0f} km: " + "; ".join(
+        f"{count} {name.replace('_', ' ')}" for name, count in fan.status_counts().items()
+    )
+    zones = shadow.convergence_zones(depth)
+    listed = ", ".join(f"{start / 1000:.0f} to {end / 1000:.0f} km" for _, start, end in zones)
+    yield f"   {share['surface_bounces']:.0%} of the water hears none that has not met the seabed; at {depth:.0f} m"
+    yield f"   such rays come back in convergence zones: {listed or 'none'}"
+    median = float(heard.transmission_loss.sel(range=5000.0, method="nearest").median())
+    yield f"   on the shelf, {FREQUENCY:.0f} Hz over sand: {median:.0f} dB of loss at 5 km (median over depth),"
+    yield f"   by {heard.attrs['method']}, since {heard.attrs['method_reason']}"
+
+
 def _real_cast(folder: Path) -> Iterator[str]:
     """A real cast: its profile, and what each equation makes of it."""
     cast = _cast(REAL)
     profile = Profile.from_cast(cast)
     picture = profile_figure(profile, profile.features(), remark=CREDIT)
     save_figure(picture, folder / "real-cast-profile.png", replace=True)
-    yield "4. A real open cast, for whoever must defend a speed"
+    yield "6. A real open cast, for whoever must defend a speed"
     yield f"   {CREDIT}"
     yield f"   {cast.id}, at {cast.latitude:g}, {cast.longitude:g}: {len(cast)} levels to {profile.depth[-1]:.0f} m"
     yield "   Each equation less TEOS-10, over the levels within the range of the equation:"
@@ -218,7 +281,7 @@ def _all_casts(folder: Path) -> Iterator[str]:
     )
     with open_archive(output) as archive:
         save_figure(archive_figure(archive), folder / "archive.png", replace=True)
-    yield "5. An archive, for someone filing casts (invented and real casts together)"
+    yield "7. An archive, for someone filing casts (invented and real casts together)"
     yield f"   {built.casts} casts with {built.levels} levels from {built.files} files in one CF netCDF file;"
     counts = f"left out: {len(built.left_out)}, without a speed: {built.without_speed}"
     yield f"   {counts}, repeated: {len(built.duplicates)}"
