@@ -7,6 +7,7 @@ import sys
 from pathlib import Path
 
 import pytest
+import xarray as xr
 
 from ocean_sound.cli import run
 from ocean_sound.soundings.components import read_components
@@ -49,3 +50,15 @@ def test_the_python_face_of_the_readme(tmp_path, monkeypatch):
     names: dict = {}
     exec(code, names)  # noqa: S102
     assert names["rays"].sizes["ray"] == 3
+
+
+def test_the_plan_of_sensors(tmp_path, capsys):
+    page, output = tmp_path / "plan.html", tmp_path / "plan.nc"
+    arguments = ["sensors", FOLDER / "edge_receivers.toml", "--report", page, "-o", output]
+    assert run([str(argument) for argument in arguments]) == 0
+    assert "proved best" in capsys.readouterr().out
+    credit = "Casts: invented, they come with ocean_sound"
+    assert credit in page.read_text(encoding="utf-8")
+    with xr.open_dataset(output) as result:
+        assert result.attrs["acknowledgement"] == credit
+        assert result.sizes["site"] == 3

@@ -28,7 +28,8 @@ def test_importing_the_package_loads_nothing_heavy():
 
 
 @pytest.mark.parametrize(
-    "arguments", [["--help"], ["rays", "--help"], ["cast", "-h"], ["speed", "--help"], ["--version"]]
+    "arguments",
+    [["--help"], ["rays", "--help"], ["sensors", "--help"], ["cast", "-h"], ["speed", "--help"], ["--version"]],
 )
 def test_help_loads_nothing_heavy(arguments):
     assert loaded_after(command(*arguments))[0] == set()

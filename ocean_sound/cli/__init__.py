@@ -23,7 +23,7 @@ if TYPE_CHECKING:
 
 DONE, FAILED, BAD_INPUT, IN_PART, INTERRUPTED = 0, 1, 2, 3, 130
 
-_COMMANDS = ("speed", "cast", "archive", "rays", "soundings", "demo")
+_COMMANDS = ("speed", "cast", "archive", "rays", "soundings", "sensors", "demo")
 
 
 class _Commands(click.Group):

@@ -1,6 +1,6 @@
 """The demonstration, end to end: what it reads comes with the package, what it writes goes into one folder.
 
-The survey from Ostray Firth to Ostray Deep is invented, places and data alike; the cast of the last part is real.
+The survey from Ostray Firth to Ostray Deep is invented, places and data alike; the cast of part 7 is real.
 """
 
 from __future__ import annotations
@@ -17,19 +17,25 @@ from ..figures import (
     cast_sheet_figure,
     comparison_figure,
     fan_figure,
+    loss_figure,
     passport_figure,
     profile_figure,
     save_figure,
+    section_figure,
+    shadow_figure,
     swath_figure,
 )
 from ..files import packaged_profile, packaged_profiles, write_csv, write_dataset, write_text
 from ..profile import Profile
 from ..rays import even_angles, find_shadow, trace_fan
+from ..rays.loss import loss
+from ..section import Seabed, Section
 from ..soundings import Scales, compare, leave_one_out, thin
 from ..soundings.in_memory import correct_soundings
 from ..soundings.passport import passport_of_file
 from ..soundings.streaming import Job
 from ..water import equations, range_report, speed_of_columns
+from .sensors import receivers
 from .survey import synthetic_survey
 from .words import CAUTIONS, NEXT, TITLE
 
@@ -55,6 +61,15 @@ FRONT_SCALES, CASTS = Scales(time=1.5 * 3600.0, length=30_000.0), "survey-casts"
 LEFT_OUT_DEPTH = 110.0
 _UNITS = {"depth": "m", "temperature": "degC", "salinity": "PSS-78"}
 SOURCE_DEPTH, DEEP_RANGE = 100.0, 80_000.0
+# The invented slope from Ostray Deep up to Ostray Edge: range along the track and depth, m; what it is made of; how
+# far it is looked at, and the depth at which someone listens.
+SLOPE = (
+    (0.0, 2550.0), (30_000.0, 2500.0), (60_000.0, 2300.0), (85_000.0, 1500.0), (105_000.0, 700.0), (125_000.0, 260.0),
+    (147_000.0, 203.0),
+)  # fmt: skip
+SLOPE_KINDS = ((0.0, "clay"), (70_000.0, "silt"), (110_000.0, "sand"))
+SLOPE_RANGE, LISTENING_DEPTH = 110_000.0, 60.0
+FREQUENCY = 400.0  # Hz
 
 
 def run_demo(folder: Path, *, replace: bool = False, progress: Callable[[str], None] = lambda _: None) -> str:
@@ -88,14 +103,16 @@ def run_demo(folder: Path, *, replace: bool = False, progress: Callable[[str], N
     parts = []
     for told, part in (
         (
-            "1 of 6: a shelf-edge cast, checked, and its beams (the first run compiles kernels: some seconds)",
+            "1 of 8: a shelf-edge cast, checked, and its beams (the first run compiles kernels: some seconds)",
             _shelf_edge,
         ),
-        ("2 of 6: the same place later, and what that does to soundings", _hours_later),
-        ("3 of 6: a moored source in deep water, its rays and shadow zones", _deep_water),
-        ("4 of 6: a real open cast under every equation", _real_cast),
-        ("5 of 6: an archive of all casts that come with the package", _all_casts),
-        ("6 of 6: a survey across a front, corrected with the casts taken on the way", _survey),
+        ("2 of 8: the same place later, and what that does to soundings", _hours_later),
+        ("3 of 8: a survey across a front, corrected with the casts taken on the way", _survey),
+        ("4 of 8: a moored source in deep water, its rays and shadow zones", _deep_water),
+        ("5 of 8: from the deep up the slope, through two casts", _slope),
+        ("6 of 8: receivers for tags on fish, where they hear and where not", receivers),
+        ("7 of 8: a real open cast under every equation", _real_cast),
+        ("8 of 8: an archive of all casts that come with the package", _all_casts),
     ):
         progress(told)
         parts.append("\n".join(part(folder)))
@@ -192,7 +209,7 @@ def _deep_water(folder: Path) -> Iterator[str]:
     save_figure(profile_figure(profile, features, remark=INVENTED), folder / "deep-water-profile.png", replace=True)
     save_figure(fan_figure(fan, shadow=shadow, remark=INVENTED), folder / "deep-water-rays.png", replace=True)
     share = shadow.summary()
-    yield "3. Deep water, for someone placing a source or receiver (invented cast)"
+    yield "4. Deep water, for someone placing a source or receiver (invented cast)"
     yield f"   axis of the deep channel at {features.axis_depth:.0f} m, critical depth {features.critical_depth:.0f} m"
     yield f"   source at {SOURCE_DEPTH:.0f} m, {len(fan)} rays to {DEEP_RANGE / 1000:.0f} km: " + "; ".join(
         f"{count} {name.replace('_', ' ')}" for name, count in fan.status_counts().items()
@@ -201,13 +218,52 @@ def _deep_water(folder: Path) -> Iterator[str]:
     yield f"   {share['surface_bounces']:.0%} none even with surface bounces (shadow is not silence)"
 
 
+def _slope(folder: Path) -> Iterator[str]:
+    """Rays, shadow and convergence zones where water and seabed change along the track."""
+    ranges, depths = np.array(SLOPE).T
+    section = Section.from_casts(
+        [_cast(DEEP), _cast(EDGE)], seabed=Seabed(ranges, depths, kind=SLOPE_KINDS), smooth=20.0
+    )
+    fan = trace_fan(
+        section, source_depth=SOURCE_DEPTH, launch_angles=even_angles(-10.0, 10.0, 21), max_range=SLOPE_RANGE,
+        points=801,
+    )  # fmt: skip
+    depth = LISTENING_DEPTH
+    listening = np.union1d(np.linspace(0.0, section.seabed.deepest, 61), [depth])
+    shadow = find_shadow(
+        section, source_depth=SOURCE_DEPTH, max_range=SLOPE_RANGE, depths=listening, grid=(61, 111)
+    )  # fmt: skip
+    write_dataset(fan.to_dataset(shadow), folder / "slope-rays.nc", replace=True)
+    save_figure(section_figure(section, fan, remark=INVENTED), folder / "slope-rays.png", replace=True)
+    save_figure(shadow_figure(shadow, [depth], remark=INVENTED), folder / "slope-shadow.png", replace=True)
+    heard = loss(
+        Profile.from_cast(_cast(EDGE)), source_depth=SOUNDER_DEPTH, frequency=FREQUENCY, seabed="sand",
+        phases="dropped", ranges=np.linspace(40.0, 8000.0, 200), depths=np.linspace(0.0, 202.0, 102),
+    )  # fmt: skip
+    write_dataset(heard, folder / "shelf-edge-loss.nc", replace=True)
+    save_figure(loss_figure(heard, remark=INVENTED), folder / "shelf-edge-loss.png", replace=True)
+    share = shadow.summary()
+    yield "5. From the deep up the slope, through two casts (invented casts and seabed)"
+    yield f"   {section.max_range / 1000:.0f} km of water that changes from cast to cast, above clay, silt and sand"
+    yield f"   source at {SOURCE_DEPTH:.0f} m, {len(fan)} rays to {SLOPE_RANGE / 1000:.0f} km: " + "; ".join(
+        f"{count} {name.replace('_', ' ')}" for name, count in fan.status_counts().items()
+    )
+    zones = shadow.convergence_zones(depth)
+    listed = ", ".join(f"{start / 1000:.0f} to {end / 1000:.0f} km" for _, start, end in zones)
+    yield f"   {share['surface_bounces']:.0%} of the water hears none that has not met the seabed; at {depth:.0f} m"
+    yield f"   such rays come back in convergence zones: {listed or 'none'}"
+    median = float(heard.transmission_loss.sel(range=5000.0, method="nearest").median())
+    yield f"   on the shelf, {FREQUENCY:.0f} Hz over sand: {median:.0f} dB of loss at 5 km (median over depth),"
+    yield f"   by {heard.attrs['method']}, since {heard.attrs['method_reason']}"
+
+
 def _real_cast(folder: Path) -> Iterator[str]:
     """A real cast: its profile, and what each equation makes of it."""
     cast = _cast(REAL)
     profile = Profile.from_cast(cast)
     picture = profile_figure(profile, profile.features(), remark=CREDIT)
     save_figure(picture, folder / "real-cast-profile.png", replace=True)
-    yield "4. A real open cast, for whoever must defend a speed"
+    yield "7. A real open cast, for whoever must defend a speed"
     yield f"   {CREDIT}"
     yield f"   {cast.id}, at {cast.latitude:g}, {cast.longitude:g}: {len(cast)} levels to {profile.depth[-1]:.0f} m"
     yield "   Each equation less TEOS-10, over the levels within the range of the equation:"
@@ -236,7 +292,7 @@ def _all_casts(folder: Path) -> Iterator[str]:
     )
     with open_archive(output) as archive:
         save_figure(archive_figure(archive), folder / "archive.png", replace=True)
-    yield "5. An archive, for someone filing casts (invented and real casts together)"
+    yield "8. An archive, for someone filing casts (invented and real casts together)"
     yield f"   {built.casts} casts with {built.levels} levels from {built.files} files in one CF netCDF file;"
     counts = f"left out: {len(built.left_out)}, without a speed: {built.without_speed}"
     yield f"   {counts}, repeated: {len(built.duplicates)}"
@@ -260,7 +316,7 @@ def _survey(folder: Path) -> Iterator[str]:
     save_figure(picture, folder / "survey-swath.png", replace=True)
     outer = passport_of_file(given, job, given.sizes["ping"] // 2, 0)
     save_figure(passport_figure(outer, remark=INVENTED), folder / "survey-passport.png", replace=True)
-    yield "6. A survey line of 40 km across a front, for a survey hydrographer (invented, so the truth is known)"
+    yield "3. A survey line of 40 km across a front, for a survey hydrographer (invented, so the truth is known)"
     yield f"   {found.depth.size} soundings, {len(survey.casts)} casts on the way; error of depth, rms:"
     yield "                                 at 65 °    all beams"
     for name, corrected in zip(names, (one, found), strict=True):

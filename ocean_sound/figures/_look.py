@@ -33,8 +33,16 @@ def plain_axes(axes: Axes, *, x_label: str, y_label: str = "") -> None:
 
 def heading(figure: Figure, title: str, subtitle: str) -> None:
     """Two lines at the upper left: what it is, and of which cast."""
-    figure.text(0.015, 0.985, title, ha="left", va="top", fontsize=LARGE, color=INK, fontweight="bold")
-    figure.text(0.015, 0.945, subtitle, ha="left", va="top", fontsize=SMALL, color=INK)
+    figure.text(0.015, 0.985, title, ha="left", va="top", fontsize=LARGE, color=INK, fontweight="bold",
+                parse_math=False)  # fmt: skip
+    figure.text(0.015, 0.945, subtitle, ha="left", va="top", fontsize=SMALL, color=INK, parse_math=False)
+
+
+def lift_heading(figure: Figure) -> None:
+    """Keep the two lines of the heading so many inches from the top, whatever the height of the figure."""
+    height = figure.get_size_inches()[1]
+    for text, inches in zip(figure.texts, (0.1, 0.36), strict=True):
+        text.set_y(1.0 - inches / height)
 
 
 def provenance(profile: Profile, remark: str = "") -> str:
@@ -55,6 +63,18 @@ def draw_speed(axes: Axes, profile: Profile) -> None:
     axes.plot(profile.speed[start:], profile.depth[start:], color=LINE, linewidth=1.2, gid="speed")
     if start:
         axes.plot(profile.speed[:2], profile.depth[:2], color=LINE, linewidth=1.2, linestyle="--", gid="assumed")
+
+
+def east_or_west(value: float, _position: Any = None) -> str:
+    """A longitude of any turn as people write it, for the ticks of an axis."""
+    turned = (value + 180.0) % 360.0 - 180.0
+    side = "" if turned in {0.0, -180.0} else "E" if turned > 0 else "W"
+    return f"{abs(turned):g}°{side}"
+
+
+def north_or_south(value: float, _position: Any = None) -> str:
+    """A latitude likewise."""
+    return f"{abs(value):g}°{'N' if value > 0 else 'S' if value < 0 else ''}"
 
 
 def spread_apart(wanted: NDArray[np.float64], heights: NDArray[np.float64], low: float, high: float) -> Any:

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from ..profile.features import SURFACE_REACH
-from ._look import GREY, INK, LINE, PALE, SMALL, heading, plain_axes
+from ._look import GREY, INK, LINE, PALE, SMALL, east_or_west, heading, north_or_south, plain_axes
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -93,21 +93,11 @@ def _draw_positions(axes: Axes, archive: Archive) -> None:
     axes.set_ylim(south, north)
     for axis in (axes.xaxis, axes.yaxis):
         axis.set_major_locator(MaxNLocator(nbins=7, steps=[1, 1.5, 3, 6, 9, 10]))
-    axes.xaxis.set_major_formatter(_east_or_west)
-    axes.yaxis.set_major_formatter(_north_or_south)
+    axes.xaxis.set_major_formatter(east_or_west)
+    axes.yaxis.set_major_formatter(north_or_south)
     missing = int((~known).sum())
     if missing:
         axes.set_title(f"{missing} casts without a position", loc="right", fontsize=SMALL, color=INK)
-
-
-def _east_or_west(value: float, _position: Any = None) -> str:
-    turned = (value + 180.0) % 360.0 - 180.0
-    side = "" if turned in {0.0, -180.0} else "E" if turned > 0 else "W"
-    return f"{abs(turned):g}°{side}"
-
-
-def _north_or_south(value: float, _position: Any = None) -> str:
-    return f"{abs(value):g}°{'N' if value > 0 else 'S' if value < 0 else ''}"
 
 
 def _together(longitude: NDArray[np.float64]) -> NDArray[np.float64]:

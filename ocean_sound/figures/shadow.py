@@ -76,7 +76,7 @@ def shadow_figure(shadow: Shadow, depths: Sequence[float] = (), *, title: str = 
     figure.legend(handles=keys, loc="lower center", bbox_to_anchor=(0.5, 0.0), ncols=3, fontsize=SMALL, frameon=False,
                   handlelength=2.4, columnspacing=2.0)  # fmt: skip
     told = ", ".join(f"{share:.0%} {_words(name)}" for name, share in shadow.summary().items())
-    words = f"of the water to that range lie in shadow {told}"
+    words = told.replace("%", "% of the water to that range is reached by no ray", 1)
     figure.text(0.97, 0.875, _CAUTION, ha="right", va="center", fontsize=SMALL, color=INK)
     heading(
         figure, title or f"Shadow zones, source at {shadow.source_depth:g} m", words + (f", {remark}" if remark else "")
@@ -85,7 +85,9 @@ def shadow_figure(shadow: Shadow, depths: Sequence[float] = (), *, title: str = 
 
 
 def _words(name: str) -> str:
-    return {"no_bounce": "without a bounce", "surface_bounces": "with surface bounces"}.get(name, "by any ray")
+    return {"no_bounce": "without a bounce", "surface_bounces": "by none with surface bounces either"}.get(
+        name, "by none at all"
+    )
 
 
 def _draw_masks(axes: Axes, shadow: Shadow) -> list[Artist]:

@@ -8,7 +8,7 @@ from __future__ import annotations
 import difflib
 import tomllib
 from pathlib import Path
-from typing import TYPE_CHECKING, Any, Literal, TypeVar, Union, get_args, get_origin
+from typing import TYPE_CHECKING, Annotated, Any, Literal, TypeVar, Union, get_args, get_origin
 
 from pydantic import BaseModel, ConfigDict, ValidationError
 
@@ -74,7 +74,9 @@ def _told(fault: Any, model: type[BaseModel]) -> str:
 
 def _model_at(model: type[BaseModel], place: list[str]) -> type[BaseModel]:
     for part in place:
-        inner = model.model_fields[part].annotation if part in model.model_fields else None
+        kind: Any = model.model_fields[part].annotation if part in model.model_fields else None
+        # a table that may be left out
+        inner = next((one for one in get_args(kind) if one is not type(None)), kind)
         if not (isinstance(inner, type) and issubclass(inner, BaseModel)):
             break
         model = inner
@@ -115,6 +117,8 @@ _WORDS = {float: "a number", int: "a whole number", str: "a text", bool: "true o
 def _in_words(kind: Any) -> str:
     if kind in _WORDS:
         return _WORDS[kind]
+    if get_origin(kind) is Annotated:
+        return _in_words(get_args(kind)[0])
     inner = [one for one in get_args(kind) if one is not type(None)]
     if get_origin(kind) is Literal:
         return " or ".join(map(repr, inner))

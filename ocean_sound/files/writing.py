@@ -246,7 +246,13 @@ def _cells(array: np.ndarray[Any, Any], *, blank: str) -> list[str]:
     return [_quoted(_one_line(value)) for value in array.tolist()]
 
 
-def write_dataset(dataset: xr.Dataset, path: str | PathLike[str], *, replace: bool = False) -> None:
+def write_dataset(
+    dataset: xr.Dataset,
+    path: str | PathLike[str],
+    *,
+    replace: bool = False,
+    groups: Mapping[str, xr.Dataset] | None = None,
+) -> None:
     """Write a dataset as netCDF-4, whole or not at all, with the global attributes that CF and ACDD ask for.
 
     Parameters
@@ -258,6 +264,8 @@ def write_dataset(dataset: xr.Dataset, path: str | PathLike[str], *, replace: bo
         The output.
     replace : bool
         Whether an existing file may be replaced.
+    groups : mapping of str to xarray.Dataset, optional
+        Further datasets, each in a group of that name (``xarray.open_dataset(path, group=name)`` opens it).
 
     Raises
     ------
@@ -274,18 +282,26 @@ def write_dataset(dataset: xr.Dataset, path: str | PathLike[str], *, replace: bo
     written = dataset.assign_attrs(
         Conventions=CONVENTIONS, date_created=now, history=f"{earlier}\n{line}" if earlier else line
     )
+    with replacing(path, replace) as temporary, HDF5_LOCK:
+        try:
+            _write_group(written, temporary, None)
+            for group, content in (groups or {}).items():
+                _write_group(content, temporary, group)
+        except RuntimeError as error:  # how netCDF reports a full disk
+            raise OutputError(f"{path}: can't be written as netCDF: {error}") from error
+
+
+def _write_group(dataset: xr.Dataset, path: Path, group: str | None) -> None:
     times = {name: variable for name, variable in dataset.variables.items() if variable.dtype.kind == "M"}
-    written = written.assign({name: _in_seconds(variable) for name, variable in times.items()})
+    written = dataset.assign({name: _in_seconds(variable) for name, variable in times.items()})
     encoding: dict[Any, dict[str, Any]] = {
         name: {"_FillValue": None if name in dataset.dims else np.nan}
         for name, variable in written.variables.items()
         if variable.dtype.kind == "f"
     }
-    with replacing(path, replace) as temporary, HDF5_LOCK:
-        try:
-            written.to_netcdf(temporary, format="NETCDF4", engine="netcdf4", encoding=encoding)
-        except RuntimeError as error:  # how netCDF reports a full disk
-            raise OutputError(f"{path}: can't be written as netCDF: {error}") from error
+    written.to_netcdf(
+        path, mode="w" if group is None else "a", group=group, format="NETCDF4", engine="netcdf4", encoding=encoding
+    )
 
 
 def _in_seconds(variable: xr.Variable) -> tuple[Any, NDArray[np.float64], dict[Any, Any]]:

@@ -36,6 +36,7 @@ MAX_BOUNCES = 4
 MOST_BOUNCES = 1000
 STEEPEST, STEP = 89.9, 0.1  # degrees: the fan that is searched where the caller gives none
 _EXACT = 1e-6, 1e-11  # tolerances, m and s, of the rays that are handed out
+_INSIDE = 1e-4  # m
 _FIRST_COLUMN = 5  # of the fields of Arrivals
 _TURNS = 1 << 20  # more than any ray has
 
@@ -128,6 +129,9 @@ class _Layers:
     def depth_at(self, distance: float) -> float:  # noqa: ARG002  # the same at all ranges
         return self.medium.seabed_depth
 
+    def slope_at(self, distance: float) -> float:  # noqa: ARG002
+        return 0.0
+
     def _fan(self, angles: np.ndarray) -> Any:
         return trace_fan(
             self.water,
@@ -191,6 +195,10 @@ class _Water:
     def depth_at(self, distance: float) -> float:
         checked_range(self.section, distance)
         return float(self.section.seabed.depth_at(distance))
+
+    def slope_at(self, distance: float) -> float:
+        """Of the seabed, degrees, positive where it falls."""
+        return float(np.degrees(np.arctan(self.section.seabed.shape_at(np.array([distance]))[0, 1])))
 
     def _ends(self, angles: np.ndarray, tolerances: tuple[float, float], bounces: int = 0) -> Ends:
         return trace_to(
@@ -297,11 +305,18 @@ def find_arrivals(
     for distance in np.unique(ranges):
         here = np.flatnonzero(ranges == distance)
         side.range = float(distance)
-        found, left = brackets(side.land, angles, depths[here])
+        seabed = side.depth_at(side.range)
+        # at a boundary no ray passes a depth: it is sought a little inside
+        inside = np.where(
+            depths[here] <= 0.0, _INSIDE, np.where(depths[here] >= seabed, seabed - _INSIDE, depths[here])
+        )
+        found, left = brackets(side.land, angles, inside)
         unresolved += left
-        launched, _, receiver = refine(side.exact, found, depths[here])
+        launched, _, receiver = refine(side.exact, found, inside)
         if launched.size:
-            parts.append(_columns(side, launched, here[receiver], depths, frequency))
+            columns = _columns(side, launched, here[receiver], depths, frequency)
+            onward = _leaves(columns["arrival_angle"], depths[here[receiver]], seabed, side.slope_at(side.range))
+            parts.append({name: None if values is None else values[~onward] for name, values in columns.items()})
     joined = _joined(parts)
     return Arrivals(
         water=water,
@@ -358,6 +373,11 @@ def _columns(
     }
 
 
+def _leaves(arrival_angle: np.ndarray, receiver: np.ndarray, seabed: float, slope: float) -> np.ndarray:
+    """Whether rays come back from the boundary at which their receiver lies: the same as those that go there."""
+    return np.asarray(((receiver <= 0.0) & (arrival_angle > 0.0)) | ((receiver >= seabed) & (arrival_angle < slope)))
+
+
 def _joined(parts: list[dict[str, Any]]) -> dict[str, Any]:
     """The columns of all ranges together, by receiver and then by time."""
     if not parts:
@@ -396,7 +416,8 @@ def connect(
     receiver_depth, receiver_range : float or array_like
         Depth and horizontal distance of each receiver, m; one of them may be the same for all.
     max_bounces : int
-        Rays with more bounces, off surface and seabed together, are left out.
+        Rays with more bounces, off surface and seabed together, are left out. Where a ray meets a receiver on the
+        surface or the seabed counts as none.
     launch_angles : array_like, optional
         The fan, degrees, that the search begins with; by default each 0.1 degree from -89.9 to 89.9. Rays are sought
         between its first and last angle.

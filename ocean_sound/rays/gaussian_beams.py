@@ -109,7 +109,8 @@ def beam_field(
     widths = np.minimum(np.minimum(width, WIDEST_PART * bottom), np.sqrt(8.0 * ranges / wavenumber))
     widths = np.maximum(widths, np.minimum(_THINNEST / wavenumber, WIDEST_PART * bottom))
     wanted = np.minimum(_SPACING * widths / ranges, _TURN / (wavenumber * widths))
-    fan, levels = _fan(section, source_depth, float(ranges[-1]), float(wanted.min()), beams)
+    evenly = beams is not None and phases == "dropped"
+    fan, levels = _fan(section, source_depth, float(ranges[-1]), float(wanted.min()), beams, evenly=evenly)
     if phases == "surface":
         local = 2.0 * np.pi * frequency / float(section.speed_at(0.0, source_depth))
         fan[2] = 2.0 * np.sin(local * source_depth * np.sin(np.radians(fan[0]))) ** 2
@@ -204,14 +205,15 @@ def natural_half_width(section: Section, frequency: float) -> float:
 
 
 def _fan(
-    section: Section, source_depth: float, farthest: float, wanted: float, beams: int | None
+    section: Section, source_depth: float, farthest: float, wanted: float, beams: int | None, *, evenly: bool
 ) -> tuple[Floats, Floats]:
     """Launch angles (degrees), the angle each stands for (rad), ones; and for how coarse a fan each of them serves.
 
-    They are so many rad apart, or so many in all, and closer where rays part faster than in even water.
+    They are so many rad apart, or so many in all, and closer where rays part faster than in even water; or all as far
+    apart: without phases a given number of them does as well so, and over a rough seabed in a quarter of the time.
     """
     places = np.linspace(-STEEPEST, STEEPEST, _PLACES)
-    density = _density(section, source_depth, farthest, places)
+    density = np.ones(places.size) if evenly else _density(section, source_depth, farthest, places)
     reached = np.concatenate(([0.0], np.cumsum(0.5 * (density[1:] + density[:-1]) * np.radians(np.diff(places)))))
     if beams is None:
         beams = int(np.clip(np.ceil(reached[-1] / wanted), _FEWEST_BEAMS, MOST_BEAMS))

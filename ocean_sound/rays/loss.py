@@ -119,7 +119,8 @@ def loss(
     absorption : float, optional
         Of the water, dB/km; by default that of Francois and Garrison for 10 degC and a salinity of 35 at mid depth.
     beams : int, optional
-        How many beams are launched; by default as many as frequency, range and half-width ask for.
+        How many beams are launched; by default as many as frequency, range and half-width ask for, closer where rays
+        part faster. A number given with phases dropped is spread evenly, which saves tracing a fan to see where.
     half_width : float, optional
         Of the beams, m; by default what fits the water, see `gaussian_beams.natural_half_width`.
     insist : bool

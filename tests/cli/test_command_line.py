@@ -43,7 +43,7 @@ def rays(path, *more):
 # --- results
 
 
-@pytest.mark.parametrize("command", [[], ["speed"], ["cast"], ["rays"], ["demo"]])
+@pytest.mark.parametrize("command", [[], ["speed"], ["cast"], ["rays"], ["sensors"], ["demo"]])
 def test_each_command_has_help_with_an_example(ask, command):
     status, out, err = ask(*command, "--help")
     assert (status, err) == (0, "")
@@ -111,12 +111,13 @@ def test_rays_write_netcdf_csv_and_figure(ask, cast, tmp_path):
     assert ask(*rays(cast, "--shadow", "--figure", figure))[0] == 0
     assert figure.read_text().lstrip().startswith("<?xml")
     with xarray.open_dataset(outputs[0]) as dataset:
-        assert dict(dataset.sizes) | {"interval": 0} == {
+        assert dict(dataset.sizes) | {"interval": 0, "zone": 0} == {
             "ray": 41,
             "point": 50,
             "grid_depth": 201,
             "grid_range": 501,
             "interval": 0,
+            "zone": 0,
         }
         assert dataset.attrs["Conventions"] == "CF-1.11 ACDD-1.3"
     lines = [line for line in outputs[1].read_text().splitlines() if not line.startswith("#")]
@@ -152,6 +153,7 @@ def test_demo_runs_twice_in_a_row(ask, tmp_path):
         assert "not a navigational product" in out
     names = {path.name for path in folder.iterdir()}
     assert {"SUMMARY.txt", "deep-water-rays.nc", "deep-water-rays.png", "real-cast-equations.csv"} <= names
+    assert {"receivers.html", "receivers.png"} <= names
     table = np.genfromtxt(folder / "real-cast-equations.csv", delimiter=",", names=True)
     assert np.nanmax(np.abs(table["delgrosso_ms"] - table["teos10_ms"])) < 0.2
 

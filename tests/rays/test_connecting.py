@@ -350,3 +350,27 @@ def test_bad_arguments_get_one_clear_line():
     ):
         with pytest.raises(InputError, match=message):
             connect(wrong, **(good | changed))
+
+
+@pytest.mark.parametrize("sloping", [None, False, True])
+@pytest.mark.parametrize("surface", [True, False])
+def test_receivers_on_the_surface_and_on_the_seabed(surface, sloping):
+    """In even water: the images of the source (above the surface, and by a level seabed) give each path once."""
+    water = Profile([0.0, 100.0], [1500.0, 1500.0])
+    end = 100.0
+    if sloping is not None:
+        end = 60.0 if sloping else 100.0
+        seabed = Seabed([0.0, 1000.0], [100.0, end], kind="sand")
+        water = Section.from_profile(water, seabed=seabed, max_range=1000.0)
+    depth = 0.0 if surface else end
+    direct = find_arrivals(water, source_depth=30.0, receiver_depth=depth, receiver_range=1000.0, max_bounces=0)
+    assert len(direct.launch_angle) == 1
+    length = np.hypot(1000.0, depth - 30.0)
+    np.testing.assert_allclose(direct.launch_angle, np.degrees(np.arctan2(depth - 30.0, 1000.0)), atol=1e-5)
+    np.testing.assert_allclose(direct.travel_time, length / 1500.0, rtol=0, atol=1e-9)
+    if not sloping:
+        once = find_arrivals(water, source_depth=30.0, receiver_depth=depth, receiver_range=1000.0, max_bounces=1)
+        other = 170.0 if surface else -30.0  # the source in the mirror of the other boundary
+        np.testing.assert_allclose(
+            np.sort(once.travel_time), [length / 1500.0, np.hypot(1000.0, depth - other) / 1500.0], rtol=0, atol=1e-9
+        )

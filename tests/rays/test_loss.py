@@ -14,7 +14,7 @@ from scipy.optimize import brentq
 from ocean_sound.errors import InputError
 from ocean_sound.profile import Profile
 from ocean_sound.rays._kernels_influence import add_window
-from ocean_sound.rays.gaussian_beams import beam_field
+from ocean_sound.rays.gaussian_beams import STEEPEST, beam_field
 from ocean_sound.rays.loss import loss
 from ocean_sound.section import SEDIMENTS, Seabed, Section, Sediment, SpeedField, Surface
 
@@ -450,6 +450,14 @@ def test_depths_between_others_change_nothing(phases):
     wet = even[None, 1:] < section.seabed.depth_at(SMALL["ranges"])[:, None] - 1.0
     assert np.all(one.intensity[:, 1:][wet] > 0.0)
     assert np.all(one.intensity[:, even > 125.0] == 0.0)
+
+
+def test_a_given_number_of_beams_without_phases_is_spread_evenly():
+    depths = np.linspace(5.0, 95.0, 10)
+    section = slope_of_many_kinds(False)
+    dropped, kept = (beam_field(section, depths=depths, phases=phases, **SMALL) for phases in ("dropped", "kept"))
+    assert dropped.spacing == pytest.approx(2.0 * STEEPEST / 64)
+    assert kept.spacing > dropped.spacing  # closer where rays part faster, wider elsewhere
 
 
 def test_over_a_short_range_the_earth_is_flat():
