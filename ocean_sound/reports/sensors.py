@@ -328,7 +328,7 @@ def _site_pictures(plan: SensorPlan, dataset: Any) -> list[Piece]:
             picture(
                 gain_figure(plan), shows="Chart: what each further sensor adds; the table above has the numbers.",
                 caption="What each further sensor adds to those before it. Sensors are counted one by one here: "
-                "several together may reach the probability where none does alone, so the coverage above can be larger.",
+                "several together may reach it where none does alone, so the coverage above may be larger.",
             )
         )  # fmt: skip
     found.append(
