@@ -110,7 +110,7 @@ class Loss(Fields):
     method: Literal["auto", "beams", "modes"] = "auto"
     phases: Literal["kept", "surface", "dropped"] = "kept"
     absorption: float | None = Field(default=None, ge=0, le=10_000)
-    beams: int | None = Field(default=None, ge=1, le=1_000_000)
+    beams: int | None = Field(default=None, ge=2, le=100_000)
     half_width: float | None = Field(default=None, gt=0)
     insist: bool = False
 

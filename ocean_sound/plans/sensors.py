@@ -168,7 +168,7 @@ class SensorsRun(Fields):
     depths: int = Field(default=50, ge=1, le=5000)
     method: Literal["auto", "beams", "modes"] = "auto"
     phases: Literal["kept", "surface", "dropped"] = "dropped"
-    beams: int | None = Field(default=None, ge=2, le=1_000_000)
+    beams: int | None = Field(default=None, ge=2, le=100_000)
     insist: bool = False
     why_deaf: bool = True
     folder: str | None = Field(default=None, min_length=1)
