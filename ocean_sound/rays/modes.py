@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import warnings
 from dataclasses import dataclass
+from math import e, log10
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -30,7 +31,7 @@ _SAMPLES = 8
 # Shapes larger than this are not made, bytes: beams serve such frequencies.
 _LARGEST = 1 << 30
 _SETTLES = 30  # steps of Newton's method, of which far fewer count
-_DB_PER_NEPER = 20.0 * np.log10(np.e)
+_DB_PER_NEPER = 20.0 * log10(e)
 
 
 @dataclass(frozen=True, eq=False)

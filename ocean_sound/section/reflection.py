@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from math import e, log10, pi
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -16,7 +17,7 @@ if TYPE_CHECKING:
 
     Floats = NDArray[np.float64]
 
-DB_PER_NEPER_WAVELENGTH = 40.0 * np.pi * np.log10(np.e)
+DB_PER_NEPER_WAVELENGTH = 40.0 * pi * log10(e)
 """An attenuation of so many dB per wavelength makes the imaginary part of a wavenumber as large as the real: 54.6."""
 _GRAVITY = 9.81  # m/s2
 # Of the spectrum of Pierson and Moskowitz (1964, J. Geophys. Res. 69:5181): its integral is 0.0081/(4 x 0.74) u⁴/g².
@@ -138,7 +139,7 @@ def surface_reflection(
 
 
 def _slowness(speed: float, attenuation: float) -> complex:
-    return complex(1.0, attenuation / float(DB_PER_NEPER_WAVELENGTH)) / speed
+    return complex(1.0, attenuation / DB_PER_NEPER_WAVELENGTH) / speed
 
 
 def _down(along: Floats, speed: float, attenuation: float) -> Any:

@@ -50,6 +50,17 @@ def test_nothing_depends_on_the_number_of_workers():
     assert alone.source_depth.values.tolist() == [20.0, 20.0, 30.0, 20.0]
 
 
+def test_a_dask_cluster_by_its_address_gives_the_same():
+    distributed = pytest.importorskip("distributed")
+    asked = {"source_depth": 20.0, "ranges": RANGES, "depths": DEPTHS}
+    alone = ensemble(waters(), workers=0, **asked)
+    with distributed.LocalCluster(
+        n_workers=1, threads_per_worker=2, processes=False, protocol="tcp", dashboard_address=None
+    ) as cluster:
+        assert cluster.scheduler_address.startswith("tcp://")
+        assert ensemble(waters(), scheduler=cluster.scheduler_address, **asked).identical(alone)
+
+
 def test_mean_and_spread_are_those_of_numpy_where_some_are_unknown():
     rng = np.random.default_rng(1)
     values = rng.normal(80.0, 7.0, (6, 4, 5))

@@ -30,12 +30,12 @@ def still():
 def losses_of(still):
     """Losses of closed form around sites over 100 m of water."""
 
-    def compute(sites, *, folder=None, members=None, bathymetry=100.0, engine=spherical, **settings):
+    def compute(sites, *, folder=None, members=None, bathymetry=100.0, engine=spherical, scheduler=None, **settings):
         grid = {"frequency": 12e3, "max_range": 10e3, "depths": np.linspace(0.0, 90.0, 10), "bearings": 24,
                 "ranges": 100, "kind": None, **settings}  # fmt: skip
         return compute_losses(
             sites, members or [still], settings=LossSettings(**grid), bathymetry=bathymetry, folder=folder,
-            engine=engine,
+            engine=engine, scheduler=scheduler,
         )  # fmt: skip
 
     return compute

@@ -34,6 +34,20 @@ def test_what_is_kept_is_not_computed_again(losses_of, tmp_path):
     assert (more.computed, more.kept) == (24, 24)
 
 
+def test_a_dask_cluster_by_its_address_gives_the_same(losses_of, tmp_path):
+    distributed = pytest.importorskip("distributed")
+    sites = [HERE, Site("B", 30.1, -60.0, 60.0)]
+    alone = losses_of(sites, folder=tmp_path / "alone")
+    with distributed.LocalCluster(
+        n_workers=1, threads_per_worker=2, processes=False, protocol="tcp", dashboard_address=None
+    ) as cluster:
+        assert cluster.scheduler_address.startswith("tcp://")
+        found = losses_of(sites, folder=tmp_path / "cluster", scheduler=cluster.scheduler_address)
+    assert found.computed == alone.computed == 48
+    for site in (0, 1):
+        assert np.array_equal(found.of(0, site), alone.of(0, site), equal_nan=True)
+
+
 @pytest.mark.parametrize(
     "change",
     [{"frequency": 13e3}, {"max_range": 11e3}, {"ranges": 99}, {"bearings": 25}, {"wind_speed": 3.0}, {"kind": "sand"},
