@@ -19,7 +19,6 @@ from ocean_sound.files import checksum
 sys.path.insert(0, str(Path(__file__).parents[1] / "soundings"))
 from straight import as_sounding, survey
 
-pytestmark = pytest.mark.kernels
 SCALES = ("--time-scale", "4", "--length-scale", "20")
 
 

@@ -198,6 +198,7 @@ JOB = Job(WATER, choice={"scales": Scales(4 * 3600.0, 20e3), "orders": read_orde
 
 
 @pytest.mark.kernels
+@pytest.mark.long
 def test_a_file_is_corrected_as_in_memory(tmp_path):
     dataset = survey(pings=60)
     dataset.to_netcdf(tmp_path / "a.nc")
@@ -219,6 +220,7 @@ def test_a_file_is_corrected_as_in_memory(tmp_path):
 
 
 @pytest.mark.kernels
+@pytest.mark.long
 def test_many_files_by_threads_and_by_a_cluster_are_alike(tmp_path):
     distributed = pytest.importorskip("distributed")
     paths = [tmp_path / f"{name}.nc" for name in "abc"]
@@ -258,6 +260,7 @@ def test_outputs_of_many_files_must_not_collide(tmp_path):
 
 
 @pytest.mark.kernels
+@pytest.mark.long
 def test_before_and_after_of_soundings_corrected_already(tmp_path):
     dataset = survey(pings=20)
     dataset.to_netcdf(tmp_path / "a.nc")
