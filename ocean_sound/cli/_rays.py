@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import sys
-from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
@@ -12,6 +10,7 @@ from ..errors import InputError, PlanError
 from . import _shared as shared
 
 if TYPE_CHECKING:
+    from collections.abc import Iterator
     from pathlib import Path
 
     import xarray
@@ -21,10 +20,10 @@ if TYPE_CHECKING:
     from ..profile import Profile
     from ..rays import Arrivals, Fan, Shadow
     from ..section import Section
+    from ._progress import Told
 
     Water = Profile | Section
 
-Told = Callable[[str, int, int], None]
 # More rays or arrivals than this are not listed one by one for a person.
 LISTED = 45
 
@@ -421,24 +420,3 @@ def _listed(listing: dict[str, tuple[str, str]], columns: dict[str, Any]) -> lis
         for name, (_, form) in listing.items()
     ]
     return ["", *shared.table([head for head, _ in listing.values()], [list(row) for row in zip(*cells, strict=True)])]
-
-
-@contextmanager
-def progress(*, quiet: bool) -> Iterator[Told]:
-    """A line that says what is being done, on a terminal only; a bar where there are several of it."""
-    if quiet or not sys.stderr.isatty():
-        yield lambda _what, _done, _of: None
-        return
-    from rich.console import Console
-    from rich.progress import BarColumn, Progress, SpinnerColumn, TextColumn, TimeElapsedColumn
-
-    with Progress(
-        SpinnerColumn(), TextColumn("{task.description}"), BarColumn(), TimeElapsedColumn(),
-        console=Console(stderr=True), transient=True,
-    ) as bars:  # fmt: skip
-        task = bars.add_task("reading", total=None)
-
-        def told(what: str, done: int, of: int) -> None:
-            bars.update(task, description=what, completed=done, total=of if of > 1 else None)
-
-        yield told

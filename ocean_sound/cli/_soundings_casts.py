@@ -183,7 +183,7 @@ def _interval_lines(interval: CastInterval) -> list[str]:
             if math.isnan(due):
                 said = f"{what} how many {unit}: too few pairs of casts to tell"
             elif math.isinf(due):
-                said = f"not as far as the casts are apart in {'time' if unit == 'h' else 'distance'}"
+                said = f"not passed within the {'times' if unit == 'h' else 'distances'} that the casts are apart"
             else:
                 said = f"{what} {due:.2g} {unit} ({interval.confidence:.0%}: {low:.2g} to {high:.2g})"
             lines.append(f"  to {depth:g} m, limit {interval.limit[at]:.2f} m: {said}")

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import sys
 from contextlib import contextmanager
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -11,15 +10,18 @@ import click
 
 from . import IN_PART
 from . import _shared as shared
+from ._progress import progress
 
 if TYPE_CHECKING:
-    from collections.abc import Callable, Iterator, Sequence
+    from collections.abc import Iterator, Sequence
 
     import numpy as np
     from numpy.typing import NDArray
 
-    from ..archive import Archive, Built, Progress
+    from ..archive import Archive, Built
 
+# What is said of each stage of a build.
+_STAGES = {"casts": "reading casts", "archive": "writing the archive"}
 _SHOWN = 50  # lines of a table on standard error; the archive has them all
 
 which_options = (
@@ -112,7 +114,7 @@ def build(
         from ..figures import check_picture
 
         check_picture(figure, replace=replace)
-    with _kept_when_interrupted(), _progress(quiet=as_json) as progress:
+    with _kept_when_interrupted(), progress(quiet=as_json) as told:
         built = build_archive(
             paths,
             output,
@@ -127,7 +129,7 @@ def build(
             replace=replace,
             append=append,
             title=title,
-            progress=progress,
+            progress=lambda step: told(_STAGES[step.stage], 100.0 * step.share, 100.0, count=step.casts, unit="casts"),
         )
     if figure is not None:
         _draw(output, figure, replace=replace)
@@ -227,43 +229,6 @@ def _kept_when_interrupted() -> Iterator[None]:
     except KeyboardInterrupt:
         shared.tell("what is finished is kept: the same command with --resume goes on with it")
         raise
-
-
-@contextmanager
-def _progress(*, quiet: bool) -> Iterator[Callable[[Progress], None] | None]:
-    """A bar with the rate and the time left, on a terminal only."""
-    if quiet or not sys.stderr.isatty():
-        yield None
-        return
-    from rich.console import Console
-    from rich.progress import BarColumn, TaskProgressColumn, TextColumn, TimeElapsedColumn, TimeRemainingColumn
-    from rich.progress import Progress as Bars
-
-    words = {"casts": "reading casts", "archive": "writing the archive"}
-    with Bars(
-        TextColumn("{task.description}"),
-        BarColumn(),
-        TaskProgressColumn(),
-        TextColumn("{task.fields[casts]} casts, {task.fields[rate]}/s"),
-        TimeElapsedColumn(),
-        TextColumn("left"),
-        TimeRemainingColumn(),
-        console=Console(stderr=True),
-        transient=True,
-    ) as bars:
-        tasks: dict[str, Any] = {}
-
-        def told(step: Progress) -> None:
-            if step.stage not in tasks:
-                tasks[step.stage] = bars.add_task(words[step.stage], total=1.0, casts=0, rate="-")
-            task = tasks[step.stage]
-            elapsed = bars.tasks[task].elapsed or 0.0
-            rate = f"{step.casts / elapsed:,.0f}" if elapsed > 0.5 else "-"
-            bars.update(task, completed=step.share, casts=f"{step.casts:,}", rate=rate)
-
-        bars.add_task(words["casts"], total=1.0, casts=0, rate="-")
-        tasks["casts"] = bars.task_ids[0]
-        yield told
 
 
 def _chosen(

@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from . import _shared as shared
+from ._progress import progress
 
 if TYPE_CHECKING:
     from ._rays import Asked
@@ -100,7 +101,7 @@ def command(
     planned = looks_like_toml(path)
     if planned:
         _refuse_physics(context)
-    with rays.progress(quiet=as_json) as told:
+    with progress(quiet=as_json) as told:
         asked = rays.from_plan(path) if planned else _from_options(path, physics)
         for further in rays.outputs(asked, output, figure):
             check_output(further, replace=replace)

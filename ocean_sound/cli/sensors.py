@@ -2,17 +2,15 @@
 
 from __future__ import annotations
 
-import sys
-from contextlib import contextmanager
 from typing import TYPE_CHECKING, Any
 
 import click
 
 from ..errors import InputError
 from . import _shared as shared
+from ._progress import progress
 
 if TYPE_CHECKING:
-    from collections.abc import Callable, Iterator
     from pathlib import Path
 
     from ..sensors.planning import SensorPlan
@@ -68,9 +66,13 @@ def command(
     task, notes = task_of(plan, path)
     shared.tell(*(f"note: {note}" for note in notes))
     folder = None if plan.run.folder is None else path.parent / plan.run.folder
-    with _progress(quiet=as_json) as progress:
+    with progress(quiet=as_json) as told:
         found = place_sensors(
-            task, folder=folder, number=plan.run.workers, scheduler=plan.run.scheduler, progress=progress
+            task,
+            folder=folder,
+            number=plan.run.workers,
+            scheduler=plan.run.scheduler,
+            progress=lambda done, of: told("losses along bearings", done, of),
         )
     shared.tell(*(f"note: {note}" for note in found.notes))
     if output is not None:
@@ -121,30 +123,6 @@ def _check_shown(figure: Path | None, report: Path | None, *, replace: bool) -> 
         from ..reports.page import check_page
 
         check_page(report, replace=replace)
-
-
-@contextmanager
-def _progress(*, quiet: bool) -> Iterator[Callable[[int, int], None] | None]:
-    """A bar with the time left, on a terminal only."""
-    if quiet or not sys.stderr.isatty():
-        yield None
-        return
-    from rich.console import Console
-    from rich.progress import (
-        BarColumn,
-        Progress,
-        TaskProgressColumn,
-        TextColumn,
-        TimeElapsedColumn,
-        TimeRemainingColumn,
-    )
-
-    columns: tuple[Any, ...] = (
-        TextColumn("{task.description}"), BarColumn(), TaskProgressColumn(), TimeElapsedColumn(), TimeRemainingColumn(),
-    )  # fmt: skip
-    with Progress(*columns, console=Console(stderr=True), transient=True) as bars:
-        bar = bars.add_task("losses along bearings")
-        yield lambda done, of: bars.update(bar, completed=done, total=of)
 
 
 def _lines(found: SensorPlan, told: dict[str, Any]) -> list[str]:

@@ -4,8 +4,6 @@ from __future__ import annotations
 
 import math
 import shlex
-import sys
-from contextlib import contextmanager
 from typing import TYPE_CHECKING, Any
 
 import click
@@ -15,9 +13,10 @@ from . import IN_PART
 from . import _shared as shared
 from . import _soundings as steps
 from . import _soundings_casts as judging
+from ._progress import progress
 
 if TYPE_CHECKING:
-    from collections.abc import Callable, Iterator, Mapping, Sequence
+    from collections.abc import Mapping, Sequence
     from pathlib import Path
 
     from matplotlib.figure import Figure
@@ -329,10 +328,15 @@ def _corrected(
     """Each file corrected; and those that could not be, with the reason, where there are several."""
     from ..soundings.streaming import correct_file, correct_files
 
-    with _progress(quiet=quiet) as progress:
+    with progress(quiet=quiet) as told:
         if len(paths) == 1:
-            return [correct_file(paths[0], job, output, progress=progress)], []
-        done, lost = correct_files(paths, job, output, scheduler=scheduler, progress=progress)
+            one = correct_file(
+                paths[0], job, output, progress=lambda n, of: told("correcting", n, of, count=n, unit="soundings")
+            )
+            return [one], []
+        done, lost = correct_files(
+            paths, job, output, scheduler=scheduler, progress=lambda n, of: told("correcting files", n, of)
+        )
     shared.tell(*(f"left out: {path}: {why}" for path, why in lost))
     if not done:
         raise InputError(f"none of {len(paths)} files could be corrected")
@@ -440,29 +444,3 @@ def _beam(done: Sequence[Corrected], asked: Mapping[str, Any]) -> judging.Beam:
     if top is None:
         top = min((one.transducer_depth for one in done), default=0.0)
     return judging.Beam(asked["max_angle"], asked["seabed_depth"], top, asked["array"] == "flat")
-
-
-@contextmanager
-def _progress(*, quiet: bool) -> Iterator[Callable[[int, int], None] | None]:
-    """A bar with the rate and the time left, on a terminal only."""
-    if quiet or not sys.stderr.isatty():
-        yield None
-        return
-    from rich.console import Console
-    from rich.progress import (
-        BarColumn,
-        Progress,
-        TaskProgressColumn,
-        TextColumn,
-        TimeElapsedColumn,
-        TimeRemainingColumn,
-    )
-
-    columns = (TextColumn("soundings"), BarColumn(), TaskProgressColumn(), TimeElapsedColumn(), TextColumn("left"))
-    with Progress(*columns, TimeRemainingColumn(), console=Console(stderr=True), transient=True) as bars:
-        task = bars.add_task("soundings", total=None)
-
-        def told(done: int, total: int) -> None:
-            bars.update(task, completed=done, total=total)
-
-        yield told

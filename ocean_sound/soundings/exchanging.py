@@ -151,6 +151,6 @@ def differ_most(errors: Floats) -> tuple[int, int]:
     size = np.abs(errors)
     size[np.arange(len(size)), np.arange(len(size))] = np.nan
     if np.isnan(size).all():
-        raise InputError("no two casts can be compared: two whose beams both reach the depth would be right")
+        raise InputError("no two casts can be compared: give a depth that the beams of two of them reach")
     used, true, _ = np.unravel_index(np.nanargmax(size), size.shape)
     return int(used), int(true)
