@@ -151,7 +151,7 @@ def draw_error(axes: Axes, errors: xarray.Dataset, name: str, title: str) -> Non
     angle, depth = errors["angle"].to_numpy(), errors["sounding_depth"].to_numpy()
     largest = float(np.abs(values).max()) if values.count() else 0.0
     factor, unit = (100.0, "cm") if largest < _IN_CENTIMETRES else (1.0, "m")
-    axes.set_title(f"{title} ({unit}); heavy line: none", fontsize=NORMAL, color=INK, loc="left")
+    axes.set_title(f"{title} ({unit}); heavy line: no error", fontsize=NORMAL, color=INK, loc="left")
     plain_axes(axes, x_label="angle from the vertical (degrees)", y_label="depth (m)")
     axes.set_xlim(angle[0], angle[-1])
     axes.set_ylim(depth[-1], depth[0])

@@ -82,10 +82,10 @@ def test_a_passport_adds_up_and_agrees_with_the_corrected_sounding(works, beam):
     assert found.results == pytest.approx({name: float(value) for name, value in corrected.items()}, nan_ok=True)
     assert found.name == f"ping 71, beam {beam}"
     # of the table 2 %; of the exact sum nothing is left
-    assert found.speed_tvu_95 == pytest.approx(corrected["tvu_95"], rel=0.021)
-    assert found.speed_thu_95 == pytest.approx(corrected["thu_95"], rel=0.021, abs=1e-9)
-    assert found.tvu_95 == pytest.approx(corrected["total_tvu_95"], rel=0.021)
-    assert found.thu_95 == pytest.approx(corrected["total_thu_95"], rel=0.021)
+    assert found.speed_tvu_95 == pytest.approx(corrected["tvu_95"], rel=0.02)
+    assert found.speed_thu_95 == pytest.approx(corrected["thu_95"], rel=0.02, abs=1e-9)
+    assert found.tvu_95 == pytest.approx(corrected["total_tvu_95"], rel=0.02)
+    assert found.thu_95 == pytest.approx(corrected["total_thu_95"], rel=0.02)
     assert found.tvu_95 == pytest.approx(math.sqrt(sum(size**2 for size in found.causes.values())), rel=1e-12)
     along = sum(size**2 for size in found.distance_causes.values()) / TVU_FACTOR**2
     h = OTHERS[2].sigma(60.0)
