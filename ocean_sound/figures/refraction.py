@@ -83,8 +83,7 @@ def refraction_figure(
         figure,
         f"Soundings in the water of {true}, corrected with {used}",
         f"Beams {keep}, transducer at {errors.attrs['transducer_depth']:.3g} m; "
-        "positive: found too deep, or too far out."
-        + (f"\n{remark}" if remark else ""),
+        "positive: found too deep, or too far out." + (f"\n{remark}" if remark else ""),
     )
     return figure
 
